@@ -1,0 +1,9 @@
+"""The two array types that every room speaks."""
+
+from typing import TypeAlias
+
+import numpy as np
+import numpy.typing as npt
+
+RealArray: TypeAlias = npt.NDArray[np.float64]
+ComplexArray: TypeAlias = npt.NDArray[np.complex128]

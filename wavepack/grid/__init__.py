@@ -1,0 +1,1 @@
+"""Space: axes, grids and the transforms between position and wave number."""

@@ -1,0 +1,1 @@
+"""What moves, and in what: units, particle, potentials, packets, absorbers, H."""
