@@ -1,1 +1,1 @@
-
+"""What is seen of a state: moments, regions, currents."""

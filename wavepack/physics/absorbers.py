@@ -93,7 +93,8 @@ def reflection(
     stiffness : float
         :math:`\hbar^2/2m` [energy length**2].
     """
-    energy = np.maximum(np.asarray(energies, dtype=float), 1e-300)
+    given = np.asarray(energies, dtype=float)
+    energy = np.where(given > 0, given, layer.strength)  # stand-ins; overruled below
     k = np.sqrt(energy / stiffness).astype(complex)
     thickness = layer.width / slices
     middles = (np.arange(slices) + 0.5) / slices
@@ -107,14 +108,16 @@ def reflection(
         step = (q - behind) / (q + behind)
         phase = np.exp(1j * q * thickness)
         denominator = 1 + step * gamma
-        passed = passed * (1 + step) / denominator * phase
+        if not closed:
+            passed = passed * (1 + step) / denominator * phase
         gamma = (step + gamma) / denominator * phase**2
         behind = q
     step = (k - behind) / (k + behind)
-    passed = passed * (1 + step) / (1 + step * gamma)
-    gamma = (step + gamma) / (1 + step * gamma)
+    denominator = 1 + step * gamma
+    passed = passed * (1 + step) / denominator
+    gamma = (step + gamma) / denominator
     back = np.abs(gamma) ** 2 + (0.0 if closed else np.abs(passed) ** 2)
-    return np.where(np.asarray(energies) > 0, np.minimum(back, 1.0), 1.0)
+    return np.where(given > 0, np.minimum(back, 1.0), 1.0)
 
 
 def suited_strength(

@@ -81,6 +81,10 @@ class Kinetic(Protocol):
         """Return k >= 0 [1/length] of a kinetic energy; NaN where none has it."""
         ...
 
+    def energy_slope(self, k: RealArray, axis: int) -> RealArray:
+        """Return dE/dk [energy length] of a plane wave: hbar times its speed."""
+        ...
+
     def plane(self, axis: int, position: float, band: float) -> Plane:
         """Return how to read the current through a plane.
 
@@ -129,6 +133,11 @@ class SpectralKinetic:
         del axis
         with np.errstate(invalid="ignore"):
             return np.sqrt(energy / self.particle.stiffness)
+
+    def energy_slope(self, k: RealArray, axis: int) -> RealArray:
+        """Return 2 c k [energy length]."""
+        del axis
+        return 2 * self.particle.stiffness * np.asarray(k)
 
     def plane(self, axis: int, position: float, band: float) -> Plane:
         r"""Read :math:`J = (\hbar/m)\,\mathrm{Im}\,\psi^*\psi'` below a kinetic energy."""
@@ -197,13 +206,22 @@ class StaggeredKinetic:
 
     def energy_of(self, k: RealArray, axis: int) -> RealArray:
         """Return c times the square of the differences' wave number [energy]."""
-        dx = self.grid.axes[axis].spacing
-        half = np.asarray(k) * dx / 2
-        if self.order == 2:
-            slope = 2 * np.sin(half) / dx
-        else:
-            slope = (54 * np.sin(half) - 2 * np.sin(3 * half)) / (24 * dx)
+        slope, _ = self._slope_of(np.asarray(k), axis)
         return self.particle.stiffness * slope**2
+
+    def energy_slope(self, k: RealArray, axis: int) -> RealArray:
+        """Return the derivative of `energy_of` by k [energy length]."""
+        slope, change = self._slope_of(np.asarray(k), axis)
+        return 2 * self.particle.stiffness * slope * change
+
+    def _slope_of(self, k: RealArray, axis: int) -> tuple[RealArray, RealArray]:
+        """Return the wave number that the differences see, and its derivative by k."""
+        dx = self.grid.axes[axis].spacing
+        half = k * dx / 2
+        if self.order == 2:
+            return 2 * np.sin(half) / dx, np.cos(half)
+        slope = (54 * np.sin(half) - 2 * np.sin(3 * half)) / (24 * dx)
+        return slope, (27 * np.cos(half) - 3 * np.cos(3 * half)) / 24
 
     def wavenumber_of(self, energy: RealArray, axis: int) -> RealArray:
         """Return k [1/length] whose `energy_of` is the given one; NaN where none is."""

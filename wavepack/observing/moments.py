@@ -1,0 +1,162 @@
+r"""Norm, means and spreads of a state, gathered block by block.
+
+Position and energy come from one pass over the density, momentum from
+transforms line by line, so that no temporary of the whole grid is made.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from wavepack.arrays import ComplexArray, RealArray
+from wavepack.grid import spectral
+from wavepack.grid.blocks import Blocks
+from wavepack.grid.grid import Grid
+from wavepack.observing.regions import PARTS, RegionBook
+from wavepack.physics.hamiltonian import Hamiltonian
+from wavepack.physics.kinetic import StaggeredKinetic
+
+#: Lines are transformed in groups of about this many points.
+GROUP_POINTS = 1 << 17
+
+#: Below this norm nothing is left to average over.
+LEAST_NORM = 1e-9
+
+
+@dataclass(frozen=True)
+class Moments:
+    """Averages over what is left of the state, in run units.
+
+    ``parts`` and ``regions`` are probabilities on the grid; everything else
+    but ``norm`` is divided by the norm and NaN below `LEAST_NORM`. Momentum is
+    in hbar per length.
+    """
+
+    norm: float
+    potential: float
+    kinetic: float
+    position: tuple[float, ...]
+    spread: tuple[float, ...]
+    momentum: tuple[float, ...]
+    momentum_spread: tuple[float, ...]
+    parts: RealArray
+    regions: RealArray
+
+    @property
+    def energy(self) -> float:
+        """Kinetic and potential energy, the layers apart."""
+        return self.kinetic + self.potential
+
+
+def moments(
+    psi: ComplexArray, time: float, hamiltonian: Hamiltonian, book: RegionBook
+) -> Moments:
+    """Gather the moments of a state at a time."""
+    grid = hamiltonian.grid
+    sums, marginals, potential = _densities(psi, time, hamiltonian, book)
+    norm = float(marginals[0].sum())
+    if norm < LEAST_NORM:
+        nothing = (float("nan"),) * grid.ndim
+        return Moments(
+            norm, float("nan"), float("nan"), nothing, nothing, nothing, nothing,
+            sums[: len(PARTS)], sums[len(PARTS) :],
+        )
+    position, spread = zip(
+        *(_mean_and_spread(a.coordinates, m) for a, m in zip(grid.axes, marginals, strict=True)),
+        strict=True,
+    )
+    momentum, momentum_spread, squares = _momenta(psi, grid, norm)
+    if isinstance(hamiltonian.kinetic, StaggeredKinetic):
+        kinetic = hamiltonian.kinetic.energy(psi) / norm
+    else:
+        kinetic = hamiltonian.particle.stiffness * sum(squares)
+    return Moments(
+        norm, potential / norm, kinetic, position, spread, momentum, momentum_spread,
+        sums[: len(PARTS)], sums[len(PARTS) :],
+    )
+
+
+def _densities(
+    psi: ComplexArray, time: float, hamiltonian: Hamiltonian, book: RegionBook
+) -> tuple[RealArray, list[RealArray], float]:
+    """Return the regions' sums, the density along each axis, and the potential energy."""
+    grid = hamiltonian.grid
+    landscape = hamiltonian.landscape
+    marginals = [np.zeros(n) for n in grid.shape]
+    sums = np.zeros(len(PARTS) + len(book.regions))
+    potential = 0.0
+    whole = tuple(slice(0, n) for n in grid.shape[1:])
+    for rows in Blocks(grid.shape).slices:
+        density = np.square(psi[rows].real)
+        density += np.square(psi[rows].imag)
+        density *= grid.cell
+        sums += book.sums((rows, *whole), density)
+        potential += float(np.vdot(landscape.static[rows], density))
+        for axis, marginal in enumerate(marginals):
+            others = tuple(i for i in range(grid.ndim) if i != axis)
+            along = density.sum(axis=others)
+            if axis == 0:
+                marginal[rows] = along
+            else:
+                marginal += along
+    for part in landscape.driven:
+        inside = psi[part.box]
+        weight = float(np.sum(part.values * (np.square(inside.real) + np.square(inside.imag))))
+        potential += part.drive.factor(time) * weight * grid.cell
+    return sums, marginals, potential
+
+
+def _mean_and_spread(values: RealArray, weights: RealArray) -> tuple[float, float]:
+    total = weights.sum()
+    mean = float(values @ weights / total)
+    variance = float(np.square(values - mean) @ weights / total)
+    return mean, max(variance, 0.0) ** 0.5
+
+
+def _momenta(
+    psi: ComplexArray, grid: Grid, norm: float
+) -> tuple[tuple[float, ...], tuple[float, ...], tuple[float, ...]]:
+    """Return mean, spread and mean square of the momentum along each axis."""
+    means, spreads, squares = [], [], []
+    for i, axis in enumerate(grid.axes):
+        k = spectral.signed_wavenumbers(axis)
+        first = second = 0.0
+        for lines in _lines(psi, grid, i):
+            density = np.abs(spectral.forward(lines, axis)) ** 2
+            along = density.reshape(-1, axis.points).sum(axis=0) * grid.cell
+            second += float(np.square(axis.wavenumbers) @ along)
+            if axis.basis == "fourier":
+                first += float(k @ along)
+            else:
+                slope = spectral.slope(lines, axis)
+                first += float(np.vdot(lines, slope).imag) * grid.cell
+        mean, square = first / norm, second / norm
+        means.append(mean)
+        squares.append(square)
+        spreads.append(max(square - mean**2, 0.0) ** 0.5)
+    return tuple(means), tuple(spreads), tuple(squares)
+
+
+def momentum_density(psi: ComplexArray, grid: Grid, axis: int) -> tuple[RealArray, RealArray]:
+    r"""Return the wave numbers along an axis, ascending, and the density over them.
+
+    Density [length] per unit wave number, so that its integral is the norm; on
+    a sine axis it is over standing waves, k > 0.
+    """
+    line = grid.axes[axis]
+    density = np.zeros(line.points)
+    for lines in _lines(psi, grid, axis):
+        coefficients = spectral.forward(lines, line)
+        density += (np.abs(coefficients) ** 2).reshape(-1, line.points).sum(axis=0)
+    step = abs(line.wavenumbers[1] - line.wavenumbers[0]) if line.points > 1 else 1.0
+    order = np.argsort(line.wavenumbers)
+    return line.wavenumbers[order], density[order] * grid.cell / step
+
+
+def _lines(psi: ComplexArray, grid: Grid, axis: int) -> list[ComplexArray]:
+    """Return groups of lines along an axis, that axis last."""
+    if grid.ndim == 1:
+        return [psi]
+    moved = np.moveaxis(psi, axis, -1)
+    rows = max(1, GROUP_POINTS * moved.shape[0] // grid.size)
+    return [moved[first : first + rows] for first in range(0, moved.shape[0], rows)]

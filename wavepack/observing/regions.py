@@ -1,0 +1,108 @@
+"""Probability in named parts of space, on the grid and in the absorber's books."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+from typing import Final, Literal, Protocol
+
+import numpy as np
+
+from wavepack.arrays import RealArray
+from wavepack.grid.grid import Grid
+
+Role = Literal["transmitted", "reflected", "none"]
+
+#: The parts whose sum is the balance: each is added up on its own.
+PARTS: Final = ("transmitted", "reflected", "neither")
+
+#: Weights of fields up to this size are kept; larger ones are made box by box.
+KEPT_POINTS: Final = 1 << 16
+
+
+class Cells(Protocol):
+    """A box of cells and a probability in each."""
+
+    box: tuple[slice, ...]
+    removed: RealArray
+
+
+@dataclass(frozen=True)
+class Region:
+    """A named part of space.
+
+    A cell counts by the part of it that the region covers: ``windows`` holds
+    that share along each axis, to be multiplied, or ``counts`` the number of
+    covered samples of each cell out of ``samples``.
+    """
+
+    name: str
+    role: Role
+    windows: tuple[RealArray, ...] = ()
+    counts: np.ndarray | None = field(default=None, repr=False)
+    samples: int = 1
+
+    def weights(self, box: tuple[slice, ...]) -> RealArray:
+        """Return the covered share of each cell of a box."""
+        if self.counts is not None:
+            return np.asarray(self.counts[box] / self.samples)
+        product = np.ones([1] * len(box))
+        for i, window in enumerate(self.windows):
+            shape = [-1 if j == i else 1 for j in range(len(box))]
+            product = product * window[box[i]].reshape(shape)
+        return product
+
+
+class RegionBook:
+    """All regions of a run; sums any probability per cell into them."""
+
+    def __init__(self, grid: Grid, regions: Sequence[Region]) -> None:
+        self.grid = grid
+        self.regions = tuple(regions)
+        self.names = tuple(region.name for region in regions)
+        self._kept: dict[tuple[tuple[int, int], ...], tuple[RealArray, ...]] = {}
+
+    def overlap(self) -> float:
+        """Return the largest total share of a cell that regions with a role claim."""
+        largest = 0.0
+        for first in range(0, self.grid.shape[0], 256):
+            box = (
+                slice(first, min(first + 256, self.grid.shape[0])),
+                *(slice(0, n) for n in self.grid.shape[1:]),
+            )
+            claimed = self._part(box, "transmitted") + self._part(box, "reflected")
+            largest = max(largest, float(np.max(claimed)))
+        return largest
+
+    def sums(self, box: tuple[slice, ...], values: RealArray) -> RealArray:
+        """Return the sums of values over a box: the three parts, then each region."""
+        return np.array([np.sum(w * values) for w in self._weights(_key(box))])
+
+    def of_patches(self, patches: Sequence[Cells]) -> RealArray:
+        """Return the same sums over boxes of removed probability."""
+        total = np.zeros(len(PARTS) + len(self.regions))
+        for patch in patches:
+            total += self.sums(patch.box, patch.removed)
+        return total
+
+    def _weights(self, key: tuple[tuple[int, int], ...]) -> tuple[RealArray, ...]:
+        if key in self._kept:
+            return self._kept[key]
+        box = tuple(slice(*pair) for pair in key)
+        transmitted = self._part(box, "transmitted")
+        reflected = self._part(box, "reflected")
+        neither = 1.0 - transmitted - reflected
+        own = (region.weights(box) for region in self.regions)
+        weights = (transmitted, reflected, neither, *own)
+        if self.grid.size <= KEPT_POINTS:
+            self._kept[key] = weights
+        return weights
+
+    def _part(self, box: tuple[slice, ...], role: Role) -> RealArray:
+        total = np.zeros([1] * len(box))
+        for region in self.regions:
+            if region.role == role:
+                total = total + region.weights(box)
+        return total
+
+
+def _key(box: tuple[slice, ...]) -> tuple[tuple[int, int], ...]:
+    return tuple((int(s.start), int(s.stop)) for s in box)

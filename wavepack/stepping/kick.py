@@ -1,0 +1,72 @@
+r"""The factor :math:`e^{-i\phi(x,t)}` of a real potential, with the layers' damping."""
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from wavepack.arrays import ComplexArray, RealArray
+from wavepack.grid.blocks import Blocks
+
+
+@dataclass(frozen=True)
+class DrivenPhase:
+    """A phase that a driven part adds inside a box: sum of f_j(t) phases_j."""
+
+    box: tuple[slice, ...]
+    terms: tuple[tuple[Callable[[float], float], RealArray], ...]
+
+
+class Kick:
+    r"""Multiply the state by a static factor and by driven phases.
+
+    Parameters
+    ----------
+    static : complex or real array, shape of the grid or broadcasting to it
+        The static factor, damping included.
+    driven : sequence of DrivenPhase
+        Phases [radians] that are subtracted: the state gets
+        :math:`e^{-i\sum f_j(t)\phi_j}`.
+    """
+
+    def __init__(
+        self, psi: ComplexArray, static: ComplexArray | RealArray, driven: Sequence[DrivenPhase]
+    ) -> None:
+        self._psi = psi
+        self._static = static
+        self._driven = tuple(driven)
+
+    def apply(self, rows: slice, time: float) -> None:
+        """Kick a block of rows at a time."""
+        part = self._psi[rows]
+        np.multiply(part, self._static[rows], out=part)
+        for phase in self._driven:
+            first = max(phase.box[0].start, rows.start)
+            last = min(phase.box[0].stop, rows.stop)
+            if first < last:
+                self._turn(phase, first, last, time)
+
+    def _turn(self, phase: DrivenPhase, first: int, last: int, time: float) -> None:
+        start = phase.box[0].start
+        angle: RealArray | None = None
+        for factor, values in phase.terms:
+            strength = factor(time)
+            if strength == 0.0:
+                continue
+            term = strength * values[first - start : last - start]
+            angle = term if angle is None else np.add(angle, term, out=angle)
+        if angle is not None:
+            turn = np.empty(angle.shape, dtype=np.complex128)
+            np.cos(angle, out=turn.real)
+            np.sin(angle, out=turn.imag)
+            part = self._psi[(slice(first, last), *phase.box[1:])]
+            np.multiply(part, np.conj(turn, out=turn), out=part)
+
+
+def phase_factor(angle: RealArray, blocks: Blocks) -> ComplexArray:
+    """Return exp(-i angle), built block by block."""
+    result = np.empty(angle.shape, dtype=np.complex128)
+    for rows in blocks.slices:
+        np.cos(angle[rows], out=result[rows].real)
+        np.sin(-angle[rows], out=result[rows].imag)
+    return result

@@ -1,0 +1,136 @@
+r"""What the absorbing layers remove, cell by cell.
+
+A layer multiplies the state by a real factor d <= 1 and so removes exactly
+:math:`(1-d^2)|\psi|^2\,dV` from each cell. The factor is applied once at the
+open and closed ends of a stretch of steps and twice, fused, between steps:
+the tally keeps the two sums of :math:`|\psi|^2` apart and weighs them when asked.
+"""
+
+from dataclasses import dataclass
+from itertools import pairwise
+
+import numpy as np
+
+from wavepack.arrays import ComplexArray, RealArray
+from wavepack.grid.grid import Grid
+
+#: Copies of the layers kept before they are squared and added at once.
+BUFFER_POINTS = 1 << 16
+BUFFER_COPIES = 64
+
+
+@dataclass(frozen=True)
+class Patch:
+    """A box of absorbing cells and the probability removed from each."""
+
+    box: tuple[slice, ...]
+    removed: RealArray
+
+
+class Tally:
+    """Books of what damping removes from a field.
+
+    Parameters
+    ----------
+    psi : complex array
+        The field that is damped; read, never written.
+    grid : Grid
+        Its space.
+    factors : tuple of real vectors
+        The damping d of one application, one vector an axis, multiplied.
+    buffered : bool
+        Copy small layers and square them many at a time (for small fields).
+    """
+
+    def __init__(
+        self, psi: ComplexArray, grid: Grid, factors: tuple[RealArray, ...], *, buffered: bool
+    ) -> None:
+        self._psi = psi
+        self._grid = grid
+        self._factors = factors
+        self.boxes = _absorbing_boxes(factors)
+        shapes = [tuple(s.stop - s.start for s in box) for box in self.boxes]
+        self._once = [np.zeros(shape) for shape in shapes]
+        self._twice = [np.zeros(shape) for shape in shapes]
+        cells = sum(int(np.prod(shape)) for shape in shapes)
+        self._buffers: list[ComplexArray] = []
+        self._filled = 0
+        if buffered and cells:
+            copies = max(1, min(BUFFER_COPIES, BUFFER_POINTS // cells))
+            self._buffers = [np.empty((copies, *s), dtype=np.complex128) for s in shapes]
+
+    def add(self, rows: slice, *, twice: bool) -> None:
+        """Book one damping of a block of rows that is about to happen."""
+        if self._buffers and twice:
+            self._keep()
+            return
+        sums = self._twice if twice else self._once
+        for box, total in zip(self.boxes, sums, strict=True):
+            first, last = max(box[0].start, rows.start), min(box[0].stop, rows.stop)
+            if first < last:
+                part = self._psi[(slice(first, last), *box[1:])]
+                inside = total[first - box[0].start : last - box[0].start]
+                inside += np.square(part.real)
+                inside += np.square(part.imag)
+
+    def settle(self) -> None:
+        """Add up what is still only copied."""
+        for buffer, total in zip(self._buffers, self._twice, strict=True):
+            parts = buffer[: self._filled].view(np.float64).reshape(self._filled, -1)
+            squares = np.einsum("ij,ij->j", parts, parts)
+            total += squares.reshape(-1, 2).sum(axis=1).reshape(total.shape)
+        self._filled = 0
+
+    def patches(self) -> list[Patch]:
+        """Return the probability removed so far, box by box of absorbing cells."""
+        patches = []
+        for box, once, twice in zip(self.boxes, self._once, self._twice, strict=True):
+            keep = np.ones((1,) * len(box))
+            for i, factor in enumerate(self._factors):
+                keep = keep * self._grid.along(factor[box[i]] ** 2, i)
+            removed = (1 - keep) * once + (1 - keep**2) * twice
+            patches.append(Patch(box, removed * self._grid.cell))
+        return patches
+
+    def save(self) -> dict[str, RealArray]:
+        """Return all sums, to go on from later."""
+        self.settle()
+        sums = {f"once/{i}": a.copy() for i, a in enumerate(self._once)}
+        return sums | {f"twice/{i}": a.copy() for i, a in enumerate(self._twice)}
+
+    def restore(self, saved: dict[str, RealArray]) -> None:
+        """Take up sums saved before."""
+        for i in range(len(self.boxes)):
+            self._once[i][...] = saved[f"once/{i}"]
+            self._twice[i][...] = saved[f"twice/{i}"]
+
+    def _keep(self) -> None:
+        for box, buffer in zip(self.boxes, self._buffers, strict=True):
+            buffer[self._filled] = self._psi[box]
+        self._filled += 1
+        if self._filled == len(self._buffers[0]):
+            self.settle()
+
+
+def _absorbing_boxes(factors: tuple[RealArray, ...]) -> list[tuple[slice, ...]]:
+    """Cut the absorbing cells into boxes that do not overlap.
+
+    Layers of the first axis take whole slabs, those of the next only what is
+    left between them, and so on.
+    """
+    boxes: list[tuple[slice, ...]] = []
+    inner: list[slice] = []
+    for i, factor in enumerate(factors):
+        whole = [slice(0, f.size) for f in factors[i + 1 :]]
+        absorbing = factor < 1
+        free = np.flatnonzero(~absorbing)
+        edges = [0, *(np.flatnonzero(np.diff(absorbing)) + 1), factor.size]
+        boxes += [
+            (*inner, slice(int(first), int(last)), *whole)
+            for first, last in pairwise(edges)
+            if absorbing[first]
+        ]
+        if not free.size:
+            return boxes
+        inner.append(slice(int(free[0]), int(free[-1]) + 1))
+    return boxes
