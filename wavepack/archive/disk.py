@@ -1,0 +1,97 @@
+"""Room on the disk, atomic replacement, and what the machine refuses."""
+
+import os
+import shutil
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import Final
+
+from wavepack.errors import MachineError
+
+RESERVE: Final = 64 * 2**20
+
+
+def require_space(folder: Path, needed: int, reserve: int = RESERVE) -> None:
+    """Refuse a write of ``needed`` bytes that would eat into the reserve.
+
+    Raises
+    ------
+    MachineError
+        If the disk has less than ``needed + reserve`` bytes free.
+    """
+    with machine_errors(folder, folder):
+        free = shutil.disk_usage(folder).free
+    if free < needed + reserve:
+        raise MachineError(
+            f"{folder}: disk full: {_size(needed)} to write and {_size(reserve)} of reserve, "
+            f"found {_size(free)} free. Free some space, then: wavepack resume {folder}"
+        )
+
+
+@contextmanager
+def machine_errors(path: Path, folder: Path) -> Iterator[None]:
+    """Turn what the operating system or HDF5 reports into a `MachineError`."""
+    try:
+        yield
+    except (OSError, RuntimeError) as error:
+        # HDF5 reports a full disk as RuntimeError, with errno in the text only.
+        reason = getattr(error, "strerror", None) or str(error).splitlines()[0]
+        raise MachineError(
+            f"{path}: the machine refused: {reason}. Check space and permissions, "
+            f"then: wavepack resume {folder}"
+        ) from error
+
+
+def require_folder(folder: Path) -> None:
+    """Refuse a folder that is missing or cannot be written.
+
+    Raises
+    ------
+    MachineError
+        Naming what is wrong with the folder.
+    """
+    if not folder.is_dir():
+        raise MachineError(f"{folder}: the folder does not exist")
+    if not os.access(folder, os.W_OK | os.X_OK):
+        raise MachineError(f"{folder}: no permission to write into the folder")
+
+
+def sync_file(path: Path) -> None:
+    """Ask the disk to keep what was written to a file or a folder."""
+    descriptor = os.open(path, os.O_RDONLY)
+    try:
+        os.fsync(descriptor)
+    finally:
+        os.close(descriptor)
+
+
+def write_atomically(path: Path, content: bytes) -> None:
+    """Replace a file so that it holds the old or the new content, never a part.
+
+    Raises
+    ------
+    MachineError
+        If the disk is full or the folder cannot be written.
+    """
+    require_folder(path.parent)
+    require_space(path.parent, len(content), reserve=0)
+    temporary = path.with_name(f".{path.name}.{os.getpid()}.partial")
+    with machine_errors(path, path.parent):
+        try:
+            with temporary.open("wb") as file:
+                file.write(content)
+                file.flush()
+                os.fsync(file.fileno())
+            temporary.replace(path)
+            sync_file(path.parent)
+        finally:
+            temporary.unlink(missing_ok=True)
+
+
+def _size(count: float) -> str:
+    for symbol in ("B", "kB", "MB", "GB"):
+        if count < 1000:
+            return f"{count:.3g} {symbol}"
+        count /= 1000
+    return f"{count:.3g} TB"

@@ -1,0 +1,90 @@
+"""Datasets that grow together along time, and their buffer."""
+
+from collections.abc import Mapping
+from typing import Any
+
+import h5py
+import numpy as np
+import numpy.typing as npt
+
+
+class Stream:
+    """Datasets of one group that grow together along ``time``."""
+
+    def __init__(self, group: h5py.Group) -> None:
+        self._time: h5py.Dataset = group["time"]
+        self._values: dict[str, h5py.Dataset] = {
+            name: dataset
+            for name, dataset in group.items()
+            if name != "time" and dataset.maxshape[0] is None
+        }
+        self._rows: dict[str, list[npt.NDArray[Any]]] = {}
+        self.columns = tuple(self._values)
+        self.row_bytes = sum(
+            dataset.dtype.itemsize * int(np.prod(dataset.shape[1:]))
+            for dataset in (self._time, *self._values.values())
+        )
+        self.on_disk = committed_rows(group)
+        self.kept = 0
+
+    @property
+    def count(self) -> int:
+        return self.on_disk + self.kept
+
+    def keep(self, rows: Mapping[str, npt.ArrayLike]) -> None:
+        if rows.keys() != {"time", *self.columns}:
+            raise ValueError(f"columns {sorted(rows)}, need {sorted(('time', *self.columns))}")
+        arrays = {name: self._fitting(name, value) for name, value in rows.items()}
+        lengths = {len(array) for array in arrays.values()}
+        if len(lengths) > 1:
+            raise ValueError(f"columns of unequal length: {sorted(lengths)}")
+        if not np.isfinite(arrays["time"]).all():
+            raise ValueError("time: need finite values")
+        for name, array in arrays.items():
+            self._rows.setdefault(name, []).append(array)
+        self.kept += lengths.pop()
+
+    def write_values(self) -> None:
+        stop = self.on_disk + self.kept
+        for name, dataset in self._values.items():
+            dataset.resize(stop, axis=0)
+            dataset[self.on_disk : stop] = np.concatenate(self._rows[name])
+        self._time.resize(stop, axis=0)
+
+    def write_times(self) -> None:
+        self._time[self.on_disk :] = np.concatenate(self._rows["time"])
+        self.on_disk += self.kept
+        self.kept, self._rows = 0, {}
+
+    def shrink(self, count: int) -> None:
+        for dataset in (self._time, *self._values.values()):
+            if dataset.shape[0] != count:
+                dataset.resize(count, axis=0)
+        self.on_disk, self.kept, self._rows = count, 0, {}
+
+    def _fitting(self, name: str, value: npt.ArrayLike) -> npt.NDArray[Any]:
+        dataset = self._time if name == "time" else self._values[name]
+        array = np.asarray(value)
+        if array.ndim == dataset.ndim - 1:
+            array = array[np.newaxis]
+        if array.ndim != dataset.ndim or array.shape[1:] != dataset.shape[1:]:
+            raise ValueError(f"{name}: shape {array.shape}, need (rows, *{dataset.shape[1:]})")
+        if not np.can_cast(array.dtype, dataset.dtype, "same_kind"):
+            raise ValueError(f"{name}: {array.dtype} does not fit into {dataset.dtype}")
+        # A copy: the caller may go on with its array while the row is kept.
+        return array.astype(dataset.dtype)
+
+
+def committed_rows(group: h5py.Group) -> int:
+    """Return how many rows of a group are whole: as far as times are numbers."""
+    growing = [item for item in group.values() if item.maxshape and item.maxshape[0] is None]
+    shortest = min(dataset.shape[0] for dataset in growing)
+    missing = np.flatnonzero(~np.isfinite(group["time"][:shortest]))
+    return int(missing[0]) if missing.size else shortest
+
+
+def stream_names(file: h5py.File) -> list[str]:
+    names = [name for name in ("frames", "series") if name in file]
+    for parent in ("regions", "detectors"):
+        names += [f"{parent}/{name}" for name in file[parent]]
+    return names
