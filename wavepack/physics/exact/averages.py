@@ -34,6 +34,12 @@ def momentum_density(k: npt.ArrayLike, k0: float, sigma: float) -> RealArray:
     return np.asarray(sigma * math.sqrt(2 / math.pi) * np.exp(-2 * (sigma * offset) ** 2))
 
 
+def _ladder(center: float, reach: float) -> list[float]:
+    """Return wave numbers that close in on a place, so that no line there is stepped over."""
+    rungs = [reach * 10.0**-j for j in range(13)]
+    return [center, *(center - rung for rung in rungs), *(center + rung for rung in rungs)]
+
+
 def packet_average(
     transmission: Callable[[float], float],
     k0: float,
@@ -42,7 +48,7 @@ def packet_average(
     *,
     launch: float = 0.0,
     near: Sequence[float] = (),
-    tolerance: float = 1e-11,
+    tolerance: float = 1e-10,
 ) -> float:
     r"""Return the probability that a Gaussian packet ends beyond an obstacle.
 
@@ -81,7 +87,7 @@ def packet_average(
     from scipy import integrate  # noqa: PLC0415 - kept out of the program's start
 
     lower, upper = max(0.0, k0 - _REACH / (2 * sigma)), max(0.0, k0 + _REACH / (2 * sigma))
-    marks = [math.sqrt((e - launch) / c) for e in near if e > launch]
+    marks = (k for e in near if e > launch for k in _ladder(math.sqrt((e - launch) / c), upper))
     edges = sorted({lower, *(k for k in (k0, *marks) if lower < k < upper), upper})
     value, error = 0.0, 0.0
     for left, right in itertools.pairwise(edges):

@@ -113,7 +113,8 @@ def _cross_flat(layer: Layer, energy: ComplexArray) -> _Crossing:
     cos, sin = (plus + minus) / 2, (plus - minus) / 2j
     # sin(kd)/k tends to d at the top of the layer, where k is 0.
     at_top = np.abs(phase) < 1e-8
-    sin_over_k = np.where(at_top, layer.thickness + 0j, sin / np.where(at_top, 1.0, k))
+    quotient = sin / np.where(at_top, 1.0, k)
+    sin_over_k: ComplexArray = np.where(at_top, layer.thickness + 0j, quotient)
     return _Crossing(cos, -sin_over_k / layer.c, layer.c * k * sin, cos, growth)
 
 
