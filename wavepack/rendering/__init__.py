@@ -1,1 +1,1 @@
-
+"""Pictures of a run: movies, overviews, spectra. The renderer never propagates."""
