@@ -1,12 +1,14 @@
 """Room on the disk, atomic replacement, and what the machine refuses."""
 
 import os
+import re
 import shutil
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
 from typing import Final
 
+from wavepack.archive.layout import CHECKPOINT_FILE
 from wavepack.errors import MachineError
 
 RESERVE: Final = 64 * 2**20
@@ -25,7 +27,7 @@ def require_space(folder: Path, needed: int, reserve: int = RESERVE) -> None:
     if free < needed + reserve:
         raise MachineError(
             f"{folder}: disk full: {_size(needed)} to write and {_size(reserve)} of reserve, "
-            f"found {_size(free)} free. Free some space, then: wavepack resume {folder}"
+            f"found {_size(free)} free. Free some space, {_then(folder)}"
         )
 
 
@@ -35,11 +37,9 @@ def machine_errors(path: Path, folder: Path) -> Iterator[None]:
     try:
         yield
     except (OSError, RuntimeError) as error:
-        # HDF5 reports a full disk as RuntimeError, with errno in the text only.
-        reason = getattr(error, "strerror", None) or str(error).splitlines()[0]
+        reason = getattr(error, "strerror", None) or _reason(str(error))
         raise MachineError(
-            f"{path}: the machine refused: {reason}. Check space and permissions, "
-            f"then: wavepack resume {folder}"
+            f"{path}: the machine refused: {reason}. Check space and permissions, {_then(folder)}"
         ) from error
 
 
@@ -66,13 +66,17 @@ def sync_file(path: Path) -> None:
         os.close(descriptor)
 
 
-def write_atomically(path: Path, content: bytes) -> None:
+def write_atomically(path: Path, content: bytes, previous: Path | None = None) -> None:
     """Replace a file so that it holds the old or the new content, never a part.
+
+    What was written is read back and compared before it takes the place of the
+    old content, which is kept as ``previous`` if that is given.
 
     Raises
     ------
     MachineError
-        If the disk is full or the folder cannot be written.
+        If the disk is full, the folder cannot be written, or the disk does
+        not return what was written.
     """
     require_folder(path.parent)
     require_space(path.parent, len(content), reserve=0)
@@ -83,10 +87,39 @@ def write_atomically(path: Path, content: bytes) -> None:
                 file.write(content)
                 file.flush()
                 os.fsync(file.fileno())
+            if temporary.read_bytes() != content:
+                raise MachineError(f"{path}: the disk did not return what was written to it")
+            if previous is not None and path.exists():
+                _keep_as(path, previous)
             temporary.replace(path)
             sync_file(path.parent)
         finally:
             temporary.unlink(missing_ok=True)
+
+
+def _keep_as(path: Path, previous: Path) -> None:
+    """Give the file a second name, so that it is never without the first."""
+    link = previous.with_name(f".{previous.name}.{os.getpid()}.partial")
+    link.unlink(missing_ok=True)
+    try:
+        os.link(path, link)
+    except OSError:
+        # Some file systems have no hard links.
+        path.replace(previous)
+    else:
+        link.replace(previous)
+
+
+def _then(folder: Path) -> str:
+    if (folder / CHECKPOINT_FILE).exists():
+        return f"then: wavepack resume {folder}"
+    return "then run it again"
+
+
+def _reason(text: str) -> str:
+    """Return what the system said; HDF5 reports a full disk with errno in the text only."""
+    quoted = re.search(r"error message = '([^']+)'", text)
+    return quoted[1] if quoted else " ".join(text.split()) or "no reason given"
 
 
 def _size(count: float) -> str:

@@ -29,9 +29,11 @@ class Stream:
 
     @property
     def count(self) -> int:
+        """Rows written and rows kept back."""
         return self.on_disk + self.kept
 
     def keep(self, rows: Mapping[str, npt.ArrayLike]) -> None:
+        """Keep rows of all columns and their times for the next writing."""
         if rows.keys() != {"time", *self.columns}:
             raise ValueError(f"columns {sorted(rows)}, need {sorted(('time', *self.columns))}")
         arrays = {name: self._fitting(name, value) for name, value in rows.items()}
@@ -45,6 +47,7 @@ class Stream:
         self.kept += lengths.pop()
 
     def write_values(self) -> None:
+        """Write the kept values; their times stay unknown, so no row counts yet."""
         stop = self.on_disk + self.kept
         for name, dataset in self._values.items():
             dataset.resize(stop, axis=0)
@@ -52,11 +55,13 @@ class Stream:
         self._time.resize(stop, axis=0)
 
     def write_times(self) -> None:
+        """Write the times of the kept rows, which makes them count."""
         self._time[self.on_disk :] = np.concatenate(self._rows["time"])
         self.on_disk += self.kept
         self.kept, self._rows = 0, {}
 
     def shrink(self, count: int) -> None:
+        """Drop all rows after the first ``count``, and what was kept."""
         for dataset in (self._time, *self._values.values()):
             if dataset.shape[0] != count:
                 dataset.resize(count, axis=0)
@@ -84,6 +89,7 @@ def committed_rows(group: h5py.Group) -> int:
 
 
 def stream_names(file: h5py.File) -> list[str]:
+    """Return the paths of all groups that grow."""
     names = [name for name in ("frames", "series") if name in file]
     for parent in ("regions", "detectors"):
         names += [f"{parent}/{name}" for name in file[parent]]

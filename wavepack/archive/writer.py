@@ -257,8 +257,8 @@ class RunWriter:
 
         HDF5 holds on to what it could not write, tries again when the file is
         closed and at the very end of the process, and may crash there. Its
-        descriptor is therefore turned towards a scratch file in memory before
-        the file is closed: all it still writes goes nowhere.
+        descriptor is therefore turned towards the null device before the file
+        is closed: all it still writes goes nowhere.
         """
         file, self._file = self._file, None
         if file is None:
