@@ -36,6 +36,10 @@ class LinePicture:
         self._stamp = time_format(frames.times, scene.units.time)
         self._panel, strip_rect = _layout(sheet, with_strip=curves is not None)
         self._columns = _columns(scene, self._panel)
+        window = energy_window(scene.potential, scene.mean_energy)
+        heights = np.clip((np.nan_to_num(scene.potential) - window[0]) / np.ptp(window), -1, 2)
+        rows = self._panel.bottom - self._panel.height * heights
+        self._potential = np.stack([self._columns, rows], axis=1)
         draw_structure(sheet, self._panel, scene)
         self._draw_left_axis()
         self._strip = None
@@ -85,6 +89,9 @@ class LinePicture:
         image = self.canvas.pixels.view(np.uint32)[..., 0][panel.slices]
         covered = np.arange(panel.height, 0, -1)[:, None] - 0.5 < heights
         np.copyto(image, colours[None, :], where=covered)
+        # The colours hide the potential, so its line is drawn once more.
+        if np.any(self._scene.potential):
+            self.canvas.line(self._potential, style.POTENTIAL, 0.1 * self._sheet.em, panel)
         self.canvas.line(curve, style.INK, 0.1 * self._sheet.em, panel)
 
     def _curve(self, shares: RealArray, base: float) -> RealArray:

@@ -67,7 +67,7 @@ class MapPicture:
         """Return the panel's colours, shape (height, width)."""
         if self._kind == "real":
             values = self._scale(self._spread(frame.real))
-            return style.signed_table()[_index((values + 1) / 2, style.LEVELS)]
+            return style.signed_table()[_index((values + 1) / 2, style.LEVELS + 1)]
         brightness = self._scale(self._spread(density_of(frame)))
         if self._kind == "density":
             return style.density_table()[_index(brightness, style.LEVELS)]
@@ -351,7 +351,7 @@ def _beside(sheet: Sheet, panel: Rect, bar: Rect) -> _Layout:
     em = sheet.em
     left = bar.right + round(9.5 * em)
     width = min(sheet.width - left - round(2 * em), round(26 * em))
-    tall = min(round(11 * em), panel.height // 2)
+    tall = min(round(15 * em), panel.height // 2)
     strip = Rect(left, panel.bottom - tall, width, tall)
     values_tall = min(round(6.8 * em), panel.height - tall - em)
     return _Layout(

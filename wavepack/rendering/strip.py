@@ -68,19 +68,24 @@ def _axes(sheet: Sheet, rect: Rect, units: Units, span: tuple[float, float]) -> 
     axes.set_xlim(*span)
     axes.set_ylim(-0.04, 1.04)
     axes.set_yticks([0, 0.5, 1], ["0", "0.5", "1"])
-    axes.xaxis.set_major_locator(round_ticks(rect.width / (6 * sheet.em)))
+    axes.xaxis.set_major_locator(round_ticks(rect.width / (4 * sheet.em)))
     axes.set_xlabel(units.label("t", units.time), fontsize=sheet.points(0.87), labelpad=sheet.points(0.1))
     axes.grid(visible=True, color=style.GRID, linewidth=0.6)
     axes.set_axisbelow(True)
     return axes
 
 
-def draw_curves(axes: Axes, curves: Curves, width: float) -> None:
-    """Draw every curve in the colour of its role, thinned to what can be seen."""
+def draw_curves(axes: Axes, curves: Curves, width: float, *, upright: bool = False) -> None:
+    """Draw every curve in the colour of its role, thinned to what can be seen.
+
+    With ``upright`` time runs upward.
+    """
     stride = max(1, len(curves.times) // _MOST_POINTS)
+    times = curves.times[::stride]
     for row, curve in enumerate(curves.curves):
+        values = curve.values[::stride]
         axes.plot(
-            curves.times[::stride], curve.values[::stride], color=colour_of(curve, row),
+            *((values, times) if upright else (times, values)), color=colour_of(curve, row),
             linestyle=style.role_dashes(curve.role), linewidth=width, label=curve.name,
         )
 

@@ -34,7 +34,7 @@ POTENTIAL: Final = "#9a6a21"
 POTENTIAL_FILL: Final = "#efe3cb"
 ENERGY: Final = "#7b3f00"
 ABSORBER: Final = "#eceaf2"
-ABSORBER_EDGE: Final = "#9b95b3"
+ABSORBER_EDGE: Final = "#7d769a"
 
 #: Colour and dashes of the probability of each role, and of what is lost.
 ROLES: Final[Mapping[str, tuple[str, Any]]] = MappingProxyType(
@@ -128,8 +128,11 @@ def density_table() -> ColourTable:
 
 @cache
 def signed_table() -> ColourTable:
-    """Colours of a signed value, shape (LEVELS,): brown, white at zero, blue."""
-    return _ramp(_DIVERGING_ANCHORS, LEVELS)
+    """Colours of a signed value, shape (LEVELS + 1,): brown, white at zero, blue."""
+    # An odd count: zero has a colour of its own, exactly that of the paper.
+    half = _ramp(_DIVERGING_ANCHORS[3:], LEVELS // 2 + 1)
+    other = _ramp(_DIVERGING_ANCHORS[3::-1], LEVELS // 2 + 1)
+    return np.concatenate([other[:0:-1], half])
 
 
 @cache
