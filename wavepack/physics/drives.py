@@ -86,3 +86,76 @@ class Drive:
         "table", "a smooth switching on and off of the whole factor", of=Envelope, default=None
     )
     hbar: float = dataclasses.field(default=math.nan, kw_only=True, compare=False)
+
+    def faults(self) -> tuple[tuple[str, str], ...]:
+        """Return (key, message) for each contradiction between the fields."""
+        found = []
+        if (self.photon_energy is None) == (self.formula is None):
+            both = "both" if self.formula is not None else "neither"
+            found.append(("photon_energy", f"need either photon_energy or formula, got {both}"))
+        if self.formula is not None:
+            if self.formula.names - {"t"}:
+                unwanted = ", ".join(sorted(self.formula.names - {"t"}))
+                found.append(("formula", f"need an expression in t alone, found {unwanted}"))
+            found += [
+                (key, "need photon_energy with it, got formula")
+                for key in ("phase", "offset")
+                if getattr(self, key)
+            ]
+        if self.envelope is not None:
+            found += [(f"envelope.{key}", text) for key, text in self.envelope.faults()]
+        return tuple(found)
+
+    def bound(self, hbar: float) -> "Drive":
+        """Return the drive with the constant [energy time] that its frequency needs."""
+        return dataclasses.replace(self, hbar=hbar)
+
+    def factor(self, t: float) -> float:
+        """Return f(t), a pure number.
+
+        Raises
+        ------
+        ValueError
+            If the drive oscillates and was not `bound`, or its formula is not
+            finite at t.
+        """
+        envelope = 1.0 if self.envelope is None else self.envelope.factor(t)
+        # Outside the envelope a formula is not asked: it need not be finite there.
+        return envelope * self._bare(t) if envelope else 0.0
+
+    def _bare(self, t: float) -> float:
+        if self.formula is not None:
+            value = float(self.formula.evaluate(t=t))
+            if not math.isfinite(value):
+                raise ValueError(f"drive formula: need a finite factor, got {value} at t = {t:g}")
+            return value
+        if self.photon_energy is None:
+            return self.offset
+        if math.isnan(self.hbar):
+            raise ValueError("drive: need hbar, bind the drive first")
+        return self.offset + math.cos(self.photon_energy / self.hbar * t + self.phase)
+
+    def period(self, hbar: float) -> float | None:
+        """Return the period h/photon_energy [time]; None if it does not repeat.
+
+        A drive with an envelope does not repeat.
+        """
+        if self.photon_energy is None or self.envelope is not None:
+            return None
+        return 2 * math.pi * hbar / self.photon_energy
+
+    def largest(self) -> float:
+        """Return a bound of |f|; for a formula, the largest of many samples.
+
+        Samples lie within the envelope, else at 0 and on a geometric scale from
+        1e-3 to 1e6 units of time.
+        """
+        if self.formula is None:
+            return abs(self.offset) + (self.photon_energy is not None)
+        start = 0.0 if self.envelope is None else self.envelope.start
+        stop = None if self.envelope is None else self.envelope.stop
+        if stop is not None:
+            times = np.linspace(start, stop, 4097)
+        else:
+            times = start + np.concatenate(([0.0], np.geomspace(1e-3, 1e6, 4096)))
+        return max(abs(self.factor(float(t))) for t in times)

@@ -53,7 +53,8 @@ class Landscape:
         self.static_pieces = tuple(piece for piece in acting if piece.drive is None)
         self.static = self._assemble(self.static_pieces)
         self.driven = tuple(
-            self._driven(piece, piece.drive) for piece in acting if piece.drive is not None
+            self._driven(piece, piece.drive.bound(particle.hbar))
+            for piece in acting if piece.drive is not None
         )
 
     @property

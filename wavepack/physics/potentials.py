@@ -22,13 +22,13 @@ how each field is read. What that cannot say:
 
 from wavepack.physics.shapes import Faults, Piece
 from wavepack.physics.shapes_free import Formula, Table
-from wavepack.physics.shapes_sharp import Aperture, Layer, Layers, Screen, Slab, Step
+from wavepack.physics.shapes_layers import Layer, Layers
+from wavepack.physics.shapes_linear import Field, Ramp
+from wavepack.physics.shapes_sharp import Aperture, Screen, Slab, Step
 from wavepack.physics.shapes_smooth import (
-    Field,
     Gaussian,
     Harmonic,
     Morse,
-    Ramp,
     Saddle,
     Sech2,
     SoftCore,

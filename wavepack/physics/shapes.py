@@ -2,11 +2,12 @@
 
 import math
 from abc import ABC, abstractmethod
+from collections.abc import Mapping
 from dataclasses import dataclass
-from typing import ClassVar
+from typing import ClassVar, Protocol
 
 from wavepack.arrays import RealArray
-from wavepack.fields import declare
+from wavepack.fields import Span, declare
 from wavepack.physics.drives import Drive
 from wavepack.physics.particle import Particle
 
@@ -15,6 +16,14 @@ Faults = tuple[tuple[str, str], ...]
 
 #: Names of the axes, in array order; a grid uses the first one or two.
 AXES = ("x", "y")
+
+
+class Converter(Protocol):
+    """A unit system, as far as the readers of custom fields need it."""
+
+    def convert(self, value: object, dimension: str) -> float:
+        """Return a number, or a text with a unit, in units of the run."""
+        ...
 
 
 @dataclass(frozen=True)
@@ -89,3 +98,30 @@ class Piece(ABC):
 def finite(*positions: float) -> tuple[float, ...]:
     """Return those positions that are not infinite."""
     return tuple(position for position in positions if math.isfinite(position))
+
+
+def axis_faults(axis: str, axes: tuple[str, ...]) -> Faults:
+    """Return the fault of a piece that runs along an axis the grid lacks."""
+    if axis in axes:
+        return ()
+    return (("axis", f"need an axis of the grid ({', '.join(axes)}), got {axis}"),)
+
+
+def mapping_faults(key: str, values: Mapping[str, float], axes: tuple[str, ...]) -> Faults:
+    """Return a fault for each axis of a mapping that the grid lacks."""
+    return tuple(
+        (f"{key}.{name}", f"need an axis of the grid ({', '.join(axes)}), got {name}")
+        for name in values
+        if name not in axes
+    )
+
+
+def spans_faults(spans: Mapping[str, Span], axes: tuple[str, ...]) -> Faults:
+    """Return the faults of spans by axis: an axis the grid lacks, an empty span."""
+    found = []
+    for name, span in spans.items():
+        if name not in axes and span != Span():
+            found.append((name, f"need an axis of the grid ({', '.join(axes)}), got {name}"))
+        if not span.lower < span.upper:
+            found.append((name, f"need from < to, got {span.lower:g}..{span.upper:g}"))
+    return tuple(found)

@@ -1,30 +1,18 @@
-"""Pieces without jumps: ramp, gaussian, sech2, harmonic, saddle, morse, softcore, field."""
+"""Smooth pieces: gaussian, sech2, harmonic, saddle, morse, softcore."""
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from typing import Any, ClassVar
+from typing import ClassVar, Final
 
 import numpy as np
 
 from wavepack.arrays import RealArray
-from wavepack.fields import Span, declare
-from wavepack.physics.edges import clipped
+from wavepack.fields import declare
 from wavepack.physics.particle import Particle
-from wavepack.physics.shapes import AXES, Faults, Piece, finite
+from wavepack.physics.shapes import AXES, Faults, Piece, axis_faults, mapping_faults
 
-
-@dataclass(frozen=True)
-class Ramp(Piece):
-    """Linear between two heights, constant outside; along y if only `y` is given."""
-
-    shape: ClassVar[str] = "ramp"
-
-    x: Span = declare("span", "where it climbs, along x", dimension="length", default=Span())
-    y: Span = declare("span", "where it climbs, along y", dimension="length", default=Span())
-    heights: tuple[float, float] = declare("custom", "[left, right]: V before and after")
-    axis: str | None = declare(
-        "choice", "axis it runs along; default: that of the span given", options=AXES, default=None
-    )
+#: Exponents are cut here: e^(-FAR) is nothing, e^(FAR) still a number.
+FAR: Final = 690.0
 
 
 @dataclass(frozen=True)
@@ -41,6 +29,25 @@ class Gaussian(Piece):
         "each_axis", "its width; uniform along an axis left out", dimension="length", above=0.0
     )
 
+    def faults(self, axes: tuple[str, ...]) -> Faults:
+        """Return (key, message) for each contradiction, on a grid of these axes."""
+        return (
+            *mapping_faults("center", self.center, axes),
+            *mapping_faults("sigma", self.sigma, axes),
+        )
+
+    def evaluate(
+        self, coordinates: tuple[RealArray, ...], spacing: tuple[float, ...], particle: Particle
+    ) -> RealArray:
+        """Return V [energy] at any positions; see `Piece.evaluate`."""
+        del spacing, particle
+        exponent = np.zeros([1] * coordinates[0].ndim)
+        for name, x in zip(AXES, coordinates, strict=False):
+            if name in self.sigma:
+                z = (x - self.center.get(name, 0.0)) / self.sigma[name]
+                exponent = exponent + z**2 / 2
+        return self.height * np.exp(-np.minimum(exponent, FAR))
+
 
 @dataclass(frozen=True)
 class Sech2(Piece):
@@ -52,6 +59,18 @@ class Sech2(Piece):
     at: float = declare("number", "its middle", dimension="length")
     width: float = declare("number", "its width", dimension="length", above=0.0)
     axis: str = declare("choice", "axis it runs along", options=AXES, default="x")
+
+    def faults(self, axes: tuple[str, ...]) -> Faults:
+        """Return (key, message) for each contradiction, on a grid of these axes."""
+        return axis_faults(self.axis, axes)
+
+    def evaluate(
+        self, coordinates: tuple[RealArray, ...], spacing: tuple[float, ...], particle: Particle
+    ) -> RealArray:
+        """Return V [energy] at any positions; see `Piece.evaluate`."""
+        del spacing, particle
+        z = np.abs(coordinates[AXES.index(self.axis)] - self.at) / self.width
+        return self.height / np.cosh(np.minimum(z, FAR / 2)) ** 2
 
 
 @dataclass(frozen=True)
@@ -69,6 +88,20 @@ class Harmonic(Piece):
     center: Mapping[str, float] = declare(
         "each_axis", "its middle; 0 along an axis left out", dimension="length", default={}
     )
+
+    def faults(self, axes: tuple[str, ...]) -> Faults:
+        """Return (key, message) for each contradiction, on a grid of these axes."""
+        return (
+            *mapping_faults("quantum", self.quantum, axes),
+            *mapping_faults("center", self.center, axes),
+        )
+
+    def evaluate(
+        self, coordinates: tuple[RealArray, ...], spacing: tuple[float, ...], particle: Particle
+    ) -> RealArray:
+        """Return V [energy] at any positions; see `Piece.evaluate`."""
+        del spacing
+        return _parabolas(coordinates, self.quantum, self.center, particle)
 
 
 @dataclass(frozen=True)
@@ -88,6 +121,23 @@ class Saddle(Piece):
         "each_axis", "the saddle point; 0 along an axis left out", dimension="length", default={}
     )
 
+    def faults(self, axes: tuple[str, ...]) -> Faults:
+        """Return (key, message) for each contradiction, on a grid of these axes."""
+        return (
+            *mapping_faults("quantum", self.quantum, axes),
+            *mapping_faults("center", self.center, axes),
+        )
+
+    def evaluate(
+        self, coordinates: tuple[RealArray, ...], spacing: tuple[float, ...], particle: Particle
+    ) -> RealArray:
+        """Return V [energy] at any positions; see `Piece.evaluate`."""
+        del spacing
+        over = {name: quantum for name, quantum in self.quantum.items() if name == "x"}
+        across = {name: quantum for name, quantum in self.quantum.items() if name != "x"}
+        hill = _parabolas(coordinates, over, self.center, particle)
+        return self.height - hill + _parabolas(coordinates, across, self.center, particle)
+
 
 @dataclass(frozen=True)
 class Morse(Piece):
@@ -99,6 +149,18 @@ class Morse(Piece):
     stiffness: float = declare("number", "range parameter", dimension="wavenumber")
     at: float = declare("number", "position of the minimum", dimension="length")
     axis: str = declare("choice", "axis it runs along", options=AXES, default="x")
+
+    def faults(self, axes: tuple[str, ...]) -> Faults:
+        """Return (key, message) for each contradiction, on a grid of these axes."""
+        return axis_faults(self.axis, axes)
+
+    def evaluate(
+        self, coordinates: tuple[RealArray, ...], spacing: tuple[float, ...], particle: Particle
+    ) -> RealArray:
+        """Return V [energy] at any positions; see `Piece.evaluate`."""
+        del spacing, particle
+        z = self.stiffness * (coordinates[AXES.index(self.axis)] - self.at)
+        return self.depth * (np.expm1(np.minimum(-z, FAR / 2)) ** 2 - 1)
 
 
 @dataclass(frozen=True)
@@ -113,19 +175,31 @@ class SoftCore(Piece):
         "each_axis", "its center; 0 along an axis left out", dimension="length", default={}
     )
 
+    def faults(self, axes: tuple[str, ...]) -> Faults:
+        """Return (key, message) for each contradiction, on a grid of these axes."""
+        return (*mapping_faults("center", self.center, axes),)
 
-@dataclass(frozen=True)
-class Field(Piece):
-    """A uniform field: energy -charge e F x, constant before `from` and after `to`."""
+    def evaluate(
+        self, coordinates: tuple[RealArray, ...], spacing: tuple[float, ...], particle: Particle
+    ) -> RealArray:
+        """Return V [energy] at any positions; see `Piece.evaluate`."""
+        del spacing
+        square = np.full([1] * coordinates[0].ndim, self.softening**2)
+        for name, x in zip(AXES, coordinates, strict=False):
+            square = square + (x - self.center.get(name, 0.0)) ** 2
+        return self.charge * particle.coulomb / np.sqrt(square)
 
-    shape: ClassVar[str] = "field"
 
-    strength: Mapping[str, float] = declare(
-        "each_axis", "field F along each axis; 0 along an axis left out", dimension="field"
-    )
-    start: Mapping[str, float] = declare(
-        "each_axis", "where the field begins", dimension="length", key="from", default={}
-    )
-    stop: Mapping[str, float] = declare(
-        "each_axis", "where the field ends", dimension="length", key="to", default={}
-    )
+def _parabolas(
+    coordinates: tuple[RealArray, ...],
+    quantum: Mapping[str, float],
+    center: Mapping[str, float],
+    particle: Particle,
+) -> RealArray:
+    r"""Return the sum of :math:`(\hbar\omega)^2 (x - x_0)^2/4c` over the axes [energy]."""
+    total = np.zeros([1] * coordinates[0].ndim)
+    for name, x in zip(AXES, coordinates, strict=False):
+        if name in quantum:
+            spring = quantum[name] ** 2 / (4 * particle.stiffness)
+            total = total + spring * (x - center.get(name, 0.0)) ** 2
+    return total
