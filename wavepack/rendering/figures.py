@@ -114,7 +114,9 @@ def _line_overview(
     image = _draw_space_time(map_axes, scene, frames, scale)
     _colour_bar(figure, figure.add_subplot(grid[1, 1]), image, scale, scene)
     if curves is not None:
-        _draw_sideways(figure.add_subplot(grid[1, 2]), curves, frames.times)
+        beside = figure.add_subplot(grid[1, 2])
+        _draw_sideways(beside, curves, frames.times)
+        _legend(beside, figure.add_subplot(grid[0, 2]), "lower left")
     return figure
 
 
@@ -231,14 +233,14 @@ def _draw_sideways(axes: Axes, curves: Curves, times: RealArray) -> None:
     axes.tick_params(labelleft=False, labelsize=9)
     axes.grid(visible=True, color=style.GRID, linewidth=0.6)
     axes.set_xlabel("probability", fontsize=10)
-    _legend(axes)
 
 
-def _legend(axes: Axes) -> None:
-    """Name the curves above their panel, where they can hide nothing."""
-    legend = axes.legend(
-        loc="lower left", bbox_to_anchor=(-0.02, 1.0), fontsize=8.5, frameon=False,
-        handlelength=2.2, borderaxespad=0.2,
+def _legend(axes: Axes, empty: Axes, place: str) -> None:
+    """Name the curves in an empty panel, where they can hide nothing."""
+    empty.set_axis_off()
+    legend = empty.legend(
+        handles=axes.get_legend_handles_labels()[0], loc=place, fontsize=9, frameon=False,
+        handlelength=2.4, borderaxespad=0.0,
     )
     for text in legend.get_texts():
         text.set_parse_math(False)
@@ -253,9 +255,6 @@ def _map_overview(
     lower = 0.0 if curves is None else 2.1
     figure = Figure(figsize=(11.0, tall + lower + 1.1), layout="constrained")
     figure.get_layout_engine().set(w_pad=0.06, h_pad=0.06, wspace=0.02, hspace=0.02)
-    figure.suptitle(
-        scene.title, x=0.012, ha="left", fontsize=12, parse_math=False
-    )
     grid = figure.add_gridspec(
         1 if curves is None else 2, 4, width_ratios=[1, 1, 1, 0.045],
         height_ratios=[1.0] if curves is None else [tall, lower - 0.4],
@@ -265,10 +264,16 @@ def _map_overview(
     for column, i in enumerate((0, (len(frames) - 1) // 2, len(frames) - 1)):
         axes = figure.add_subplot(grid[0, column])
         image = _draw_snapshot(axes, scene, frames.read(i), scale, first=column == 0)
-        axes.set_title(stamp(float(frames.times[i])).replace("\u2007", ""), fontsize=10)
+        when = stamp(float(frames.times[i])).replace("\u2007", "")
+        axes.set_title(when, loc="right", fontsize=10)
+        if column == 0:
+            axes.set_title(scene.title, loc="left", fontsize=12, pad=22, parse_math=False)
     _colour_bar(figure, figure.add_subplot(grid[0, 3]), image, scale, scene)
     if curves is not None:
-        _draw_along(figure.add_subplot(grid[1, :3]), scene, frames, curves)
+        lower_grid = grid[1, :].subgridspec(1, 2, width_ratios=[1, 0.16])
+        along = figure.add_subplot(lower_grid[0])
+        _draw_along(along, scene, frames, curves)
+        _legend(along, figure.add_subplot(lower_grid[1]), "center left")
     return figure
 
 
@@ -307,11 +312,6 @@ def _draw_along(axes: Axes, scene: Scene, frames: Frames, curves: Curves) -> Non
     axes.grid(visible=True, axis="y", color=style.GRID, linewidth=0.6)
     axes.set_xlabel(scene.units.label("t", scene.units.time), fontsize=10)
     axes.set_ylabel("probability", fontsize=10)
-    legend = axes.legend(
-        loc="center left", bbox_to_anchor=(1.005, 0.5), fontsize=9, frameon=False, handlelength=2.2
-    )
-    for text in legend.get_texts():
-        text.set_parse_math(False)
 
 
 def _spectrum(scene: Scene, spectrum: Spectrum) -> Figure:

@@ -21,8 +21,6 @@ from wavepack.rendering.scene import (
 )
 
 if TYPE_CHECKING:
-    import xarray as xr
-
     from wavepack.archive.reader import Run
 
 #: Series that are shown, by dataset: name to print and role.
@@ -37,18 +35,17 @@ _VISIBLE = 5e-4
 
 def scene_of(run: "Run") -> Scene:
     """Return what stands still: axes, potential, units, regions, detectors, layers."""
-    frames, facts = run.frames, run.facts
-    names = [name for name in ("x", "y") if name in frames.dims]
-    coordinates = tuple(np.asarray(frames[name].values, float) for name in names)
+    facts = run.facts
+    coordinates = tuple(np.asarray(points, float) for points in run.axes.values())
     shape = tuple(len(points) for points in coordinates)
     potential = np.zeros(shape) if run.potential is None else np.asarray(run.potential, float)
     return Scene(
         coordinates,
         potential,
-        Units(*(run.units.get(quantity, "") for quantity in ("length", "energy", "time"))),
+        Units(*(run.units.get(name, "") for name in ("length", "energy", "time"))),
         title=run.title,
-        regions=tuple(_region(fact, coordinates) for fact in facts.get("regions", ())),
-        detectors=tuple(_detector(fact) for fact in facts.get("detectors", ())),
+        regions=tuple(_region(fact, coordinates) for fact in facts.get("regions") or ()),
+        detectors=tuple(_detector(fact) for fact in facts.get("detectors") or ()),
         layers=tuple(_layer(fact, coordinates) for fact in facts.get("absorber") or ()),
         mean_energy=facts.get("mean_energy"),
         driven=bool(facts.get("driven", False)),
@@ -63,41 +60,40 @@ def frames_of(run: "Run") -> Frames:
     UsageError
         If the run has stored none yet.
     """
-    stored = run.frames
-    times = np.asarray(stored["time"].values, float)
-    if not len(times):
-        raise UsageError(f"{run.title or 'run'}: no frame has been stored yet; nothing to draw")
-    values = stored["psi" if "psi" in stored else "density"]
-    return Frames(times, lambda i: np.asarray(values[i].values))
+    if not len(run):
+        raise UsageError(f"{run.folder}: no frame has been stored yet, so there is nothing to draw")
+    return Frames(np.asarray(run.frame_times, float), run.frame)
 
 
 def curves_of(run: "Run") -> Curves | None:
     """Return transmission, reflection and what else is seen of the series; None without any."""
-    series = run.series
+    columns = run.columns("series")
     curves = tuple(
-        Curve(label, role, np.asarray(series[name].values, float))
+        Curve(label, role, run.read(f"series/{name}"))
         for name, (label, role) in _SHOWN.items()
-        if name in series and _is_seen(name, series)
+        if name in columns
     )
-    times = np.asarray(series["time"].values, float)
-    return Curves(times, curves) if curves and len(times) else None
+    seen = tuple(curve for curve in curves if _is_seen(curve))
+    times = run.read("series/time")
+    return Curves(times, seen) if seen and len(times) else None
 
 
-def _is_seen(name: str, series: "xr.Dataset") -> bool:
+def _is_seen(curve: Curve) -> bool:
     """Transmission and reflection always; the others if they ever leave zero."""
-    return name in {"transmission", "reflection"} or bool(
-        np.any(np.abs(np.nan_to_num(series[name].values)) > _VISIBLE)
+    return curve.role in {"transmitted", "reflected"} or bool(
+        np.any(np.abs(np.nan_to_num(curve.values)) > _VISIBLE)
     )
 
 
 def region_curves_of(run: "Run") -> Curves | None:
     """Return the probability of every region against time; None without regions."""
-    roles = {fact["name"]: fact.get("role", "none") for fact in run.facts.get("regions", ())}
-    curves, times = [], np.empty(0)
-    for name, table in run.regions.items():
-        times = np.asarray(table["time"].values, float)
-        curves.append(Curve(name, roles.get(name, "none"), np.asarray(table["probability"].values)))
-    return Curves(times, tuple(curves)) if curves and len(times) else None
+    roles = {fact["name"]: fact.get("role", "none") for fact in run.facts.get("regions") or ()}
+    times, curves = np.empty(0), []
+    for name in run.region_names:
+        times = run.read(f"regions/{name}/time")
+        values = run.read(f"regions/{name}/probability")
+        curves.append(Curve(name, roles.get(name, "none"), values))
+    return Curves(times, tuple(curves)) if len(times) else None
 
 
 def spectrum_of(run: "Run", detector: str) -> Spectrum:
@@ -108,17 +104,25 @@ def spectrum_of(run: "Run", detector: str) -> Spectrum:
     UsageError
         If there is no such detector, or it records no energies.
     """
-    spectra = run.spectra
-    if detector not in spectra:
-        known = ", ".join(spectra) or "none"
-        raise UsageError(f"spectrum: no detector {detector!r} with energies; this run has: {known}")
-    table = spectra[detector]
-    reason = run.results.get("detectors", {}).get(detector, {}).get("reason") or ""
-    return Spectrum(
-        detector,
-        *(np.asarray(table[name].values, float) for name in ("energy", "transmission", "incident")),
-        reason=reason,
-    )
+    known = [name for name in run.detector_names if run.has(f"detectors/{name}/energy")]
+    if detector not in known:
+        found = ", ".join(known) or "none"
+        raise UsageError(
+            f"spectrum: no detector {detector!r} with energies in {run.folder}; it has: {found}"
+        )
+    columns = ("energy", "transmission", "incident")
+    arrays = (run.read(f"detectors/{detector}/{name}") for name in columns)
+    return Spectrum(detector, *arrays, reason=_reason(run, detector))
+
+
+def _reason(run: "Run", detector: str) -> str:
+    """Why there is no transmission by energy, if the results say so."""
+    try:
+        results = run.results
+    except UsageError:
+        return "the run has no results yet"
+    reason = results.get("detectors", {}).get(detector, {}).get("reason")
+    return str(reason or "")
 
 
 def _region(fact: Mapping[str, Any], coordinates: Sequence[np.ndarray]) -> Region:
