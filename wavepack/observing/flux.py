@@ -12,6 +12,7 @@ state of energy E each step and :math:`\tau` the time between readings
 [NeuhauserBaer1991]_, [ZhangZhang1994]_. Nothing else of the state is kept.
 """
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -199,7 +200,14 @@ class Overlap:
     part where it has no other.
     """
 
-    def __init__(self, psi: ComplexArray, cell: float) -> None:
+    def __init__(self, start: np.ndarray, box: tuple[slice, ...], cell: float) -> None:
+        self._start = start
+        self._box = box
+        self._cell = cell
+
+    @classmethod
+    def of(cls, psi: ComplexArray, cell: float) -> "Overlap":
+        """Return the overlap with a state; ``cell`` is the volume of one cell."""
         size = np.abs(psi)
         keep = size > 1e-17 * float(size.max())
         box = []
@@ -207,10 +215,20 @@ class Overlap:
             others = tuple(i for i in range(psi.ndim) if i != axis)
             hit = np.flatnonzero(keep.any(axis=others))
             box.append(slice(int(hit[0]), int(hit[-1]) + 1))
-        self._box = tuple(box)
-        start = psi[self._box]
-        self._start = start.real.copy() if not np.any(start.imag) else start.copy()
-        self._cell = cell
+        start = psi[tuple(box)]
+        kept = start.copy() if np.any(start.imag) else start.real.copy()
+        return cls(kept, tuple(box), cell)
+
+    @classmethod
+    def restored(cls, saved: Mapping[str, np.ndarray]) -> "Overlap":
+        """Return the overlap that `save` described."""
+        box = tuple(slice(int(a), int(b)) for a, b in saved["box"])
+        return cls(saved["start"], box, float(saved["cell"]))
+
+    def save(self) -> dict[str, np.ndarray]:
+        """Return all that `restored` needs."""
+        box = np.array([(s.start, s.stop) for s in self._box])
+        return {"start": self._start, "box": box, "cell": np.array(self._cell)}
 
     def __call__(self, psi: ComplexArray) -> complex:
         """Return the overlap with a later state."""

@@ -4,6 +4,7 @@ Position and energy come from one pass over the density, momentum from
 transforms line by line, so that no temporary of the whole grid is made.
 """
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -29,7 +30,8 @@ class Moments:
 
     ``parts`` and ``regions`` are probabilities on the grid; everything else
     but ``norm`` is divided by the norm and NaN below `LEAST_NORM`. Momentum is
-    in hbar per length.
+    in hbar per length. ``beyond`` is the probability of a kinetic energy along
+    some axis above the band asked for.
     """
 
     norm: float
@@ -41,6 +43,7 @@ class Moments:
     momentum_spread: tuple[float, ...]
     parts: RealArray
     regions: RealArray
+    beyond: float = 0.0
 
     @property
     def energy(self) -> float:
@@ -49,9 +52,14 @@ class Moments:
 
 
 def moments(
-    psi: ComplexArray, time: float, hamiltonian: Hamiltonian, book: RegionBook
+    psi: ComplexArray,
+    time: float,
+    hamiltonian: Hamiltonian,
+    book: RegionBook,
+    *,
+    band: float = float("inf"),
 ) -> Moments:
-    """Gather the moments of a state at a time."""
+    """Gather the moments of a state at a time; ``band`` is a kinetic energy [energy]."""
     grid = hamiltonian.grid
     sums, marginals, potential = _densities(psi, time, hamiltonian, book)
     norm = float(marginals[0].sum())
@@ -65,14 +73,15 @@ def moments(
         *(_mean_and_spread(a.coordinates, m) for a, m in zip(grid.axes, marginals, strict=True)),
         strict=True,
     )
-    momentum, momentum_spread, squares = _momenta(psi, grid, norm)
+    limit = math.sqrt(band / hamiltonian.particle.stiffness)
+    momentum, momentum_spread, squares, beyond = _momenta(psi, grid, norm, limit)
     if isinstance(hamiltonian.kinetic, StaggeredKinetic):
         kinetic = hamiltonian.kinetic.energy(psi) / norm
     else:
         kinetic = hamiltonian.particle.stiffness * sum(squares)
     return Moments(
         norm, potential / norm, kinetic, position, spread, momentum, momentum_spread,
-        sums[: len(PARTS)], sums[len(PARTS) :],
+        sums[: len(PARTS)], sums[len(PARTS) :], beyond,
     )
 
 
@@ -114,17 +123,22 @@ def _mean_and_spread(values: RealArray, weights: RealArray) -> tuple[float, floa
 
 
 def _momenta(
-    psi: ComplexArray, grid: Grid, norm: float
-) -> tuple[tuple[float, ...], tuple[float, ...], tuple[float, ...]]:
-    """Return mean, spread and mean square of the momentum along each axis."""
-    means, spreads, squares = [], [], []
+    psi: ComplexArray, grid: Grid, norm: float, limit: float
+) -> tuple[tuple[float, ...], tuple[float, ...], tuple[float, ...], float]:
+    """Return mean, spread and mean square of the momentum along each axis.
+
+    Last, the largest probability, over the axes, of |k| above a limit.
+    """
+    means, spreads, squares, beyond = [], [], [], 0.0
     for i, axis in enumerate(grid.axes):
         k = spectral.signed_wavenumbers(axis)
-        first = second = 0.0
+        first = second = outside = 0.0
+        fast = np.abs(axis.wavenumbers) > limit
         for lines in _lines(psi, grid, i):
             density = np.abs(spectral.forward(lines, axis)) ** 2
             along = density.reshape(-1, axis.points).sum(axis=0) * grid.cell
             second += float(np.square(axis.wavenumbers) @ along)
+            outside += float(along[fast].sum())
             if axis.basis == "fourier":
                 first += float(k @ along)
             else:
@@ -134,7 +148,8 @@ def _momenta(
         means.append(mean)
         squares.append(square)
         spreads.append(max(square - mean**2, 0.0) ** 0.5)
-    return tuple(means), tuple(spreads), tuple(squares)
+        beyond = max(beyond, outside)
+    return tuple(means), tuple(spreads), tuple(squares), beyond
 
 
 def momentum_density(psi: ComplexArray, grid: Grid, axis: int) -> tuple[RealArray, RealArray]:

@@ -1,0 +1,383 @@
+"""From a scenario to the objects that propagate it."""
+
+import math
+import os
+from dataclasses import asdict, dataclass, field
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+
+from wavepack.arrays import ComplexArray, RealArray
+from wavepack.errors import Fault, ScenarioError
+from wavepack.fields import Span
+from wavepack.grid.axis import Axis
+from wavepack.grid.grid import Grid
+from wavepack.observing.flux import FluxDetector, Spectrum
+from wavepack.observing.moments import momentum_density
+from wavepack.observing.incident import Incident, Launch, incident
+from wavepack.observing.regions import Region, RegionBook
+from wavepack.physics.absorbers import Layer, suited_strength
+from wavepack.physics.edges import covered_by_span, covered_fraction
+from wavepack.physics.hamiltonian import Hamiltonian
+from wavepack.physics.kinetic import SpectralKinetic, StaggeredKinetic, link_positions
+from wavepack.physics.landscape import Landscape
+from wavepack.physics.packets import initial_state
+from wavepack.scenario.content import Content, content
+from wavepack.scenario.schema import DetectorSpec, RegionSpec, Scenario
+from wavepack.stepping.crank_nicolson import CrankNicolson
+from wavepack.stepping.schedule import Schedule, frame_steps
+from wavepack.stepping.scheme import Clock, Scheme, Stepper
+from wavepack.stepping.split_operator import SplitOperator
+
+#: Detectors keep up with this many times the largest kinetic energy expected.
+BAND_MARGIN = 2.0
+#: Series have between this many rows and twice as many, unless told otherwise.
+RECORDS = 1000
+#: Fields below this many points are not worth a second thread.
+THREADED_POINTS = 1 << 15
+
+
+@dataclass(frozen=True)
+class Choices:
+    """What was chosen from the initial state; a resumed run takes it as it was.
+
+    Attributes
+    ----------
+    dt, span : float
+        Time step, and the time over which the frames are spread [time].
+    strengths : tuple of float
+        Strength of each absorbing layer [energy].
+    reference : float
+        Energy about which implicit steps turn [energy].
+    read_every, record_every, pause_every : int
+        Strides of the schedule.
+    energies : dict of name to (start, stop, points)
+        Energies of each detector.
+    signs : dict of name to +1 or -1
+        The direction along its axis that counts as forward at each detector.
+    """
+
+    dt: float
+    span: float
+    strengths: tuple[float, ...]
+    reference: float
+    read_every: int
+    record_every: int
+    pause_every: int
+    energies: dict[str, tuple[float, float, int]] = field(default_factory=dict)
+    signs: dict[str, float] = field(default_factory=dict)
+
+    def as_dict(self) -> dict[str, Any]:
+        """Return plain values for a file."""
+        return asdict(self)
+
+    @classmethod
+    def from_dict(cls, saved: dict[str, Any]) -> "Choices":
+        """Return the choices read from a file."""
+        energies = {k: (v[0], v[1], int(v[2])) for k, v in saved["energies"].items()}
+        return cls(**(saved | {"strengths": tuple(saved["strengths"]), "energies": energies}))
+
+
+class Setup:
+    """A scenario made ready: grid, Hamiltonian, initial state, scheme, schedule.
+
+    Parameters
+    ----------
+    scenario : Scenario
+        What was asked.
+    choices : Choices, optional
+        Those of an earlier process; without them they are made from the
+        initial state.
+
+    Raises
+    ------
+    ScenarioError
+        If the initial state cannot be made or regions with a role overlap.
+    """
+
+    def __init__(self, scenario: Scenario, choices: Choices | None = None) -> None:
+        self.scenario = scenario
+        self.particle = scenario.particle
+        self.grid = Grid(
+            tuple(
+                Axis(name, spec.start, spec.stop, spec.points, spec.ends)
+                for name, spec in scenario.grid.items()
+            )
+        )
+        self.landscape = Landscape(self.grid, self.particle, scenario.potential)
+        self.book = RegionBook(self.grid, [self._region(spec) for spec in scenario.region])
+        self._check_overlap()
+        if choices is None:
+            steps = self.whole_steps(scenario)
+            self.dt = scenario.time.end / steps
+            self.choices = self._choose(steps)
+        else:
+            self.dt = choices.dt
+            self.choices = choices
+        self.steps = max(1, math.ceil(scenario.time.end / self.dt * (1 - 1e-12)))
+
+    @staticmethod
+    def whole_steps(scenario: Scenario) -> int:
+        """Return how many steps, none longer than asked, reach the scenario's end."""
+        return max(1, math.ceil(scenario.time.end / scenario.propagator.step * (1 - 1e-12)))
+
+    @property
+    def spectral(self) -> bool:
+        """Whether the kinetic step is made in wave-number space."""
+        return self.scenario.propagator.method == "split-operator"
+
+    @cached_property
+    def kinetic(self) -> SpectralKinetic | StaggeredKinetic:
+        """The propagator's kinetic operator."""
+        if self.spectral:
+            return SpectralKinetic(self.grid, self.particle)
+        masses = tuple(self._masses(axis) for axis in range(self.grid.ndim))
+        order = self.scenario.propagator.space_order or 2
+        return StaggeredKinetic(self.grid, self.particle, masses, order)
+
+    @cached_property
+    def hamiltonian(self) -> Hamiltonian:
+        """Kinetic operator, potential and layers."""
+        layers = tuple(
+            Layer(
+                layer.axis, layer.upper, layer.start, layer.stop, layer.form, strength,
+                layer.power,
+            )
+            for layer, strength in zip(self.bare_layers, self.choices.strengths, strict=True)
+        )
+        return Hamiltonian(self.kinetic, self.landscape, layers)
+
+    @cached_property
+    def bare_layers(self) -> tuple[Layer, ...]:
+        """Where the layers lie, their strength not yet chosen."""
+        spec = self.scenario.absorber
+        layers = []
+        for i, axis in enumerate(self.grid.axes):
+            for upper, end in enumerate(axis.ends):
+                if end != "absorbing" or spec is None:
+                    continue
+                width = spec.width[axis.name][upper]
+                start = axis.stop - width if upper else axis.start
+                layers.append(
+                    Layer(i, bool(upper), start, start + width, spec.form, 1.0, spec.power)
+                )
+        return tuple(layers)
+
+    @cached_property
+    def start(self) -> tuple[ComplexArray, float | None]:
+        """The initial state, and the probability found where a packet was cut."""
+        return initial_state(
+            self.scenario.packet, self.grid, self.particle, self.scenario.potential
+        )
+
+    @cached_property
+    def content(self) -> Content:
+        """Momenta and energies of the initial state."""
+        return content(self.start[0], self.grid, self.landscape)
+
+    @cached_property
+    def scheme(self) -> Scheme:
+        """The propagator."""
+        if self.spectral:
+            return SplitOperator(4 if self.scenario.propagator.order == 4 else 2)
+        return CrankNicolson()
+
+    def bind(self, threads: int) -> Stepper:
+        """Return the stepper; its array is not yet filled."""
+        return self.scheme.bind(
+            self.hamiltonian, self.dt, threads=threads, reference=self.choices.reference
+        )
+
+    def schedule(self) -> Schedule:
+        """Return the stops, up to the scenario's end."""
+        frames = frame_steps(
+            self.scenario.output.frames, self.choices.span, self.dt, self.steps * self.dt
+        )
+        return Schedule(
+            self.dt, self.steps, self.choices.read_every, self.choices.record_every,
+            self.choices.pause_every, frames,
+        )
+
+    @property
+    def clock(self) -> Clock:
+        """How fast the scheme turns stationary states."""
+        cayley = not self.spectral and self.grid.ndim == 1
+        return Clock(self.dt, self.particle.hbar, cayley=cayley, reference=self.choices.reference)
+
+    def central_energy(self) -> float:
+        """Return the total energy [energy] of the central momentum of the initial state.
+
+        Mean energy less that of the momentum spread, summed over the axes.
+        """
+        spread = 0.0
+        for axis in range(self.grid.ndim):
+            k, density = momentum_density(self.start[0], self.grid, axis)
+            total = density.sum()
+            mean = float(k @ density / total)
+            spread += float((k - mean) ** 2 @ density / total)
+        return self.choices.reference - self.particle.stiffness * spread
+
+    def detectors(self, clock: Clock) -> tuple[FluxDetector, ...]:
+        """Return the detectors, nothing gathered yet."""
+        return tuple(self._detector(spec, clock) for spec in self.scenario.detector)
+
+    def incidents(self) -> dict[str, Incident]:
+        """Return the incident weight by energy for each detector."""
+        return {
+            spec.name: incident(
+                self.start[0], self.hamiltonian, self.grid.index(spec.axis), spec.at,
+                np.linspace(*self.choices.energies[spec.name]),
+            )
+            for spec in self.scenario.detector
+        }
+
+    def forget_start(self) -> None:
+        """Let go of the initial state, once it has been handed on."""
+        self.__dict__.pop("start", None)
+
+    def default_threads(self) -> int:
+        """Return one thread for small fields, else the processors this process may use."""
+        if self.grid.size < THREADED_POINTS:
+            return 1
+        return min(len(os.sched_getaffinity(0)), 8)
+
+    @property
+    def band(self) -> float:
+        """Kinetic energy [energy] up to which the detectors' sampling can tell."""
+        return math.pi * self.particle.hbar / (self.choices.read_every * self.dt)
+
+    def _detector(self, spec: DetectorSpec, clock: Clock) -> FluxDetector:
+        axis = self.grid.index(spec.axis)
+        energies = np.linspace(*self.choices.energies[spec.name])
+        return FluxDetector(
+            spec.name,
+            self.kinetic.plane(axis, spec.at, self.band),
+            self._across(spec, axis),
+            self.choices.signs[spec.name],
+            self.dt,
+            self.particle.hbar,
+            self.choices.read_every,
+            Spectrum(energies, clock.angle(energies), clock.rate(energies)),
+        )
+
+    def _across(self, spec: DetectorSpec, axis: int) -> RealArray:
+        """Transverse cell size times the share of each transverse cell counted."""
+        weights = np.ones(1)
+        for i, line in enumerate(self.grid.axes):
+            if i != axis:
+                share = covered_by_span(spec.spans.get(line.name, Span()), line)
+                weights = np.outer(weights, share * line.spacing).ravel()
+        return weights
+
+    def _region(self, spec: RegionSpec) -> Region:
+        if spec.where is not None:
+            counts, samples = covered_fraction(spec.where, self.grid)
+            return Region(spec.name, spec.role, counts=counts, samples=samples)
+        windows = tuple(
+            covered_by_span(spec.spans.get(axis.name, Span()), axis) for axis in self.grid.axes
+        )
+        return Region(spec.name, spec.role, windows)
+
+    def _check_overlap(self) -> None:
+        claimed = self.book.overlap()
+        if claimed > 1 + 1e-9:
+            names = ", ".join(r.name for r in self.book.regions if r.role != "none")
+            raise ScenarioError(
+                [
+                    Fault(
+                        "region",
+                        f"regions with a role overlap ({names}): some point is claimed "
+                        f"{claimed:.3g} times; give one of them role = \"none\" or move its edge",
+                        file=self.scenario.name,
+                    )
+                ]
+            )
+
+    def _masses(self, axis: int) -> float | RealArray:
+        """Return the mass on the links of an axis: a number if it is one everywhere."""
+        lines = list(self.grid.axes)
+        positions = [line.coordinates for line in lines]
+        positions[axis] = link_positions(lines[axis])
+        mesh = tuple(np.ix_(*positions))
+        spacing = tuple(line.spacing for line in lines)
+        total: float | RealArray = self.particle.mass
+        for piece in self.scenario.potential:
+            excess = piece.mass_excess(mesh, spacing, self.particle)
+            if excess is not None and piece.acts != "before":
+                total = total + excess
+        if isinstance(total, np.ndarray):
+            shape = [p.size for p in positions]
+            return np.ascontiguousarray(np.broadcast_to(total, shape))
+        return total
+
+    def _choose(self, steps: int) -> Choices:
+        strengths = tuple(self._strength(layer) for layer in self.bare_layers)
+        fastest = self.content.largest_kinetic(self.landscape.lowest)
+        reads = math.floor(
+            math.pi * self.particle.hbar / (BAND_MARGIN * fastest * self.dt)
+        ) if fastest > 0 else 1
+        record = self._record_every(steps)
+        limit = record or max(1, steps // RECORDS)
+        read = max(1, min(reads, limit)) if self.scenario.detector else limit
+        if record is None:
+            record = read * max(1, steps // (RECORDS * read))
+        else:
+            read = _divisor(record, read)
+        reference = Hamiltonian(self.kinetic, self.landscape).energy(self.start[0])
+        return Choices(
+            self.dt, self.scenario.time.end, strengths, reference, read, record, self._pause_every(),
+            {spec.name: self._energies(spec) for spec in self.scenario.detector},
+            {spec.name: self._sign(spec) for spec in self.scenario.detector},
+        )
+
+    def _sign(self, spec: DetectorSpec) -> float:
+                if spec.toward is not None:
+            return 1.0 if spec.toward.startswith("+") else -1.0
+        axis = self.grid.index(spec.axis)
+        return 1.0 if spec.at >= self.content.centre[axis] else -1.0
+
+    def _record_every(self, steps: int) -> int | None:
+        asked = self.scenario.output.record_every
+        return None if asked is None else max(1, min(round(asked / self.dt), steps))
+
+    def _strength(self, layer: Layer) -> float:
+        spec = self.scenario.absorber
+        if spec is not None and spec.strength is not None:
+            return spec.strength
+        if spec is not None and spec.lowest_energy is not None and layer.form != "polynomial":
+            return spec.lowest_energy
+        inner = layer.start if layer.upper else layer.stop
+        energies, weights = self.content.towards(layer.axis, self.landscape, inner)
+        if spec is not None and spec.lowest_energy is not None:
+            energies, weights = np.array([spec.lowest_energy]), np.array([1.0])
+        closed = "walls" in self.grid.axes[layer.axis].ends
+        return suited_strength(layer, energies, weights, self.particle.stiffness, closed=closed)
+
+    def _pause_every(self) -> int:
+        """Return how many steps are about a third of a second, by size alone."""
+        size = self.grid.size
+        cost = 2e-5 + 1e-8 * size * math.log2(size + 1) * (1 if self.spectral else 8)
+        return max(1, int(0.3 / cost))
+
+    def _energies(self, spec: DetectorSpec) -> tuple[float, float, int]:
+        if spec.energies is not None:
+            return (spec.energies.start, spec.energies.stop, spec.energies.points)
+        axis = self.grid.index(spec.axis)
+        launch = Launch(self.start[0], self.hamiltonian_bare, axis)
+        k, w = self.content.wavenumbers[axis], self.content.weights[axis]
+        chosen = k[w > 1e-4 * w.max()]
+        levels = float(launch.levels.min()), float(launch.levels.max())
+        low = levels[0] + self.particle.stiffness * float(chosen.min()) ** 2
+        high = levels[1] + self.particle.stiffness * float(chosen.max()) ** 2
+        return (low, high, 251)
+
+    @cached_property
+    def hamiltonian_bare(self) -> Hamiltonian:
+        """The Hamiltonian without its layers."""
+        return Hamiltonian(self.kinetic, self.landscape)
+
+
+def _divisor(number: int, limit: int) -> int:
+    """Return the largest divisor of a number up to a limit."""
+    return next(d for d in range(min(number, limit), 0, -1) if number % d == 0)
