@@ -16,8 +16,7 @@ over points not depend on where the jump falls between them.
 """
 
 import math
-from collections.abc import Callable
-from typing import TYPE_CHECKING, Final, TypeAlias
+from typing import TYPE_CHECKING
 
 import numpy as np
 import numpy.typing as npt
@@ -26,21 +25,10 @@ from wavepack.arrays import RealArray
 from wavepack.fields import Span
 from wavepack.grid.axis import Axis
 from wavepack.grid.grid import Grid
+from wavepack.physics.lattice import BLOCK_SAMPLES, SUBDIVISIONS, blocks, lattice, size, wrapped
 
 if TYPE_CHECKING:
     from wavepack.physics.expressions import Expression
-
-#: A function of an open mesh of positions; what it returns broadcasts over it.
-Field: TypeAlias = Callable[[tuple[RealArray, ...]], RealArray]
-
-#: Samples along one axis of a cell, by number of axes.
-SUBDIVISIONS: Final = {1: 64, 2: 8}
-
-#: Reach of the kernel in spacings; beyond it is below 1e-15.
-REACH: Final = 9
-
-#: Finest samples evaluated at once.
-BLOCK_SAMPLES: Final = 1 << 19
 
 
 def density(z: npt.ArrayLike) -> RealArray:
@@ -97,3 +85,22 @@ def covered_by_span(span: Span, axis: Axis) -> RealArray:
     x, half = axis.coordinates, axis.spacing / 2
     covered = np.minimum(x + half, span.upper) - np.maximum(x - half, span.lower)
     return np.asarray(np.clip(covered / axis.spacing, 0.0, 1.0))
+
+
+def covered_fraction(expression: "Expression", grid: Grid) -> tuple[npt.NDArray[np.uint8], int]:
+    """Return how many samples of each cell an expression covers, and out of how many.
+
+    64 samples a cell, evenly spaced; shape of the grid.
+    """
+    count = SUBDIVISIONS[grid.ndim]
+    inside = np.zeros(grid.shape, dtype=np.uint8)
+    for rows in blocks(grid, slice(None), BLOCK_SAMPLES // count**grid.ndim):
+        # Reach 0: the samples of the cells themselves.
+        mesh = lattice(grid, rows, count, reach=0)
+        with np.errstate(all="ignore"):
+            value = expression.evaluate(**dict(zip(grid.names, wrapped(mesh, grid), strict=True)))
+        true = np.broadcast_to(np.nan_to_num(np.asarray(value, dtype=float)) != 0, size(mesh))
+        cells = [n for samples in size(mesh) for n in (samples // count, count)]
+        within = tuple(range(1, 2 * grid.ndim, 2))
+        inside[rows] = true.reshape(cells).sum(axis=within, dtype=np.uint8)
+    return inside, count**grid.ndim

@@ -5,7 +5,7 @@ How a scenario's text becomes a packet: see `wavepack.physics.potentials`.
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any, ClassVar
+from typing import TYPE_CHECKING, ClassVar
 
 from wavepack.fields import Span, declare
 
@@ -53,7 +53,9 @@ class GaussianPacket(Packet):
         default=None,
     )
     direction: float | None = declare(
-        "custom", '"+x", "-x", "+y", "-y", or an angle from +x towards +y; default "+x"', default=None
+        "custom",
+        '"+x", "-x", "+y", "-y", or an angle from +x towards +y; default "+x"',
+        default=None,
     )
     wavenumber: Mapping[str, float] = declare(
         "each_axis",

@@ -20,6 +20,16 @@ how each field is read. What that cannot say:
   None where left out; a writer leaves those out again.
 """
 
+from collections.abc import Sequence
+from typing import Final
+
+import numpy as np
+
+from wavepack.arrays import RealArray
+from wavepack.errors import Fault, ScenarioError
+from wavepack.grid.grid import Grid
+from wavepack.physics.lattice import BLOCK_SAMPLES, blocks
+from wavepack.physics.particle import Particle
 from wavepack.physics.shapes import Faults, Piece
 from wavepack.physics.shapes_free import Formula, Table
 from wavepack.physics.shapes_layers import Layer, Layers
@@ -33,6 +43,7 @@ from wavepack.physics.shapes_smooth import (
     Sech2,
     SoftCore,
 )
+from wavepack.physics.smoothing import smoothed
 
 __all__ = [
     "SHAPES",
@@ -54,6 +65,9 @@ __all__ = [
     "SoftCore",
     "Step",
     "Table",
+    "sample",
+    "sample_gradient",
+    "total",
 ]
 
 #: The class of each `shape` of a scenario's potential.
@@ -76,3 +90,133 @@ SHAPES: dict[str, type[Piece]] = {
         Table,
     )
 }
+
+#: Steps a spacing of the differences that give slopes.
+SLOPE_STEPS: Final = 16
+
+
+def sample(piece: Piece, grid: Grid, particle: Particle, rows: slice = slice(None)) -> RealArray:
+    """Return V of one piece, without its drive, on rows of axis 0 of a grid.
+
+    Parameters
+    ----------
+    piece : Piece
+        What to sample; its edges are smoothed to the spacing
+        (`wavepack.physics.edges`).
+    grid : Grid
+        Where.
+    particle : Particle
+        What feels it.
+    rows : slice
+        Rows of axis 0.
+
+    Returns
+    -------
+    real array
+        V [energy], shape of those rows; its own memory.
+
+    Raises
+    ------
+    ScenarioError
+        If V is not finite somewhere.
+    """
+    if piece.cell_sampled:
+        values = smoothed(lambda mesh: piece.evaluate(mesh, _spacing(grid), particle), grid, rows)
+    else:
+        mesh = _mesh(grid, rows)
+        shape = np.broadcast_shapes(*(x.shape for x in mesh))
+        values = np.array(np.broadcast_to(piece.evaluate(mesh, _spacing(grid), particle), shape))
+    _check_finite(piece, values, grid, rows)
+    return values
+
+
+def sample_gradient(
+    piece: Piece, grid: Grid, particle: Particle, axis: int, rows: slice = slice(None)
+) -> RealArray:
+    r"""Return the slope of `sample` along one axis [energy/length].
+
+    .. math:: V' = \frac{45(V_1 - V_{-1}) - 9(V_2 - V_{-2}) + (V_3 - V_{-3})}{60\,h},
+              \qquad h = \Delta/16
+
+    or, where V is sampled many times a cell, the convolution with the
+    kernel's own slope.
+
+    Raises
+    ------
+    ScenarioError
+        If the slope is not finite somewhere.
+    """
+    spacing = _spacing(grid)
+    if piece.cell_sampled:
+        slope = smoothed(lambda mesh: piece.evaluate(mesh, spacing, particle), grid, rows, axis)
+        _check_finite(piece, slope, grid, rows)
+        return slope
+    mesh = _mesh(grid, rows)
+    h = spacing[axis] / SLOPE_STEPS
+    slope = np.zeros(np.broadcast_shapes(*(x.shape for x in mesh)))
+    for steps, weight in ((1, 45.0), (2, -9.0), (3, 1.0)):
+        for sign in (1, -1):
+            moved = list(mesh)
+            moved[axis] = mesh[axis] + sign * steps * h
+            value = piece.evaluate(tuple(moved), spacing, particle)
+            slope += sign * weight / (60 * h) * value
+    _check_finite(piece, slope, grid, rows)
+    return slope
+
+
+def total(
+    pieces: Sequence[Piece],
+    grid: Grid,
+    particle: Particle,
+    time: float = 0.0,
+    phase: str = "during",
+) -> RealArray:
+    """Return V [energy] of all pieces that act, drives included, on the grid.
+
+    Parameters
+    ----------
+    pieces : sequence of Piece
+        The potential.
+    grid : Grid
+        Where.
+    particle : Particle
+        What feels it.
+    time : float
+        When [time].
+    phase : str
+        ``"before"`` the start, for eigenstates, or ``"during"`` the run.
+
+    Raises
+    ------
+    ScenarioError
+        If V is not finite somewhere.
+    """
+    values = np.zeros(grid.shape)
+    acting = [piece for piece in pieces if piece.acts in ("always", phase)]
+    for rows in blocks(grid, slice(None), BLOCK_SAMPLES):
+        for piece in acting:
+            part = sample(piece, grid, particle, rows)
+            if piece.drive is not None:
+                part *= piece.drive.bound(particle.hbar).factor(time)
+            values[rows] += part
+    return values
+
+
+def _spacing(grid: Grid) -> tuple[float, ...]:
+    return tuple(axis.spacing for axis in grid.axes)
+
+
+def _mesh(grid: Grid, rows: slice) -> tuple[RealArray, ...]:
+    return (grid.coordinates[0][rows], *grid.coordinates[1:])
+
+
+def _check_finite(piece: Piece, values: RealArray, grid: Grid, rows: slice) -> None:
+    if np.isfinite(values).all():
+        return
+    first = np.argwhere(~np.isfinite(values))[0]
+    mesh = _mesh(grid, rows)
+    place = ", ".join(
+        f"{name} = {x.ravel()[i]:g}" for name, x, i in zip(grid.names, mesh, first, strict=True)
+    )
+    message = f"need a finite potential on the grid, got {values[tuple(first)]} at {place}"
+    raise ScenarioError([Fault(f"potential.{piece.name or piece.shape}", message)])

@@ -187,7 +187,7 @@ class SoftCore(Piece):
         square = np.full([1] * coordinates[0].ndim, self.softening**2)
         for name, x in zip(AXES, coordinates, strict=False):
             square = square + (x - self.center.get(name, 0.0)) ** 2
-        return self.charge * particle.coulomb / np.sqrt(square)
+        return np.asarray(self.charge * particle.coulomb / np.sqrt(square))
 
 
 def _parabolas(
