@@ -90,6 +90,11 @@ class Sheet:
             fontsize=self.points(size), parse_math=False, **options,
         )
 
+    def fitting(self, text: str, room: float, ems: float) -> float:
+        """Size in points at which a label is at most ``room`` pixels long."""
+        width = style.text_width(text, ems * self.em)
+        return self.points(ems * min(1.0, room / max(width, 1.0)))
+
     def render(self) -> Pixels:
         """Draw the figure, shape (height, width, 4)."""
         canvas = FigureCanvasAgg(self.figure)

@@ -256,21 +256,24 @@ def _map_overview(
     figure = Figure(figsize=(11.0, tall + lower + 1.1), layout="constrained")
     figure.get_layout_engine().set(w_pad=0.06, h_pad=0.06, wspace=0.02, hspace=0.02)
     grid = figure.add_gridspec(
-        1 if curves is None else 2, 4, width_ratios=[1, 1, 1, 0.045],
+        1 if curves is None else 2, 3,
         height_ratios=[1.0] if curves is None else [tall, lower - 0.4],
     )
     stamp = time_format(frames.times, scene.units.time)
-    image = None
     for column, i in enumerate((0, (len(frames) - 1) // 2, len(frames) - 1)):
         axes = figure.add_subplot(grid[0, column])
         image = _draw_snapshot(axes, scene, frames.read(i), scale, first=column == 0)
         when = stamp(float(frames.times[i])).replace("\u2007", "")
         axes.set_title(when, loc="right", fontsize=10)
         if column == 0:
-            axes.set_title(scene.title, loc="left", fontsize=12, pad=22, parse_math=False)
-    _colour_bar(figure, figure.add_subplot(grid[0, 3]), image, scale, scene)
+            axes.annotate(
+                scene.title, (0, 1), xycoords="axes fraction", xytext=(0, 24),
+                textcoords="offset points", fontsize=12, parse_math=False, annotation_clip=False,
+            )
+        if column == 2:
+            _colour_bar(figure, axes.inset_axes((1.04, 0, 0.045, 1)), image, scale, scene)
     if curves is not None:
-        lower_grid = grid[1, :].subgridspec(1, 2, width_ratios=[1, 0.16])
+        lower_grid = grid[1, :].subgridspec(1, 2, width_ratios=[1, 0.14])
         along = figure.add_subplot(lower_grid[0])
         _draw_along(along, scene, frames, curves)
         _legend(along, figure.add_subplot(lower_grid[1]), "center left")

@@ -124,9 +124,10 @@ class LinePicture:
         axes.set_yticks(places, [number(tick) for tick in ticks])
         remark = f", {scale.remark} scale" if scale.remark else ""
         colour = " coloured by phase" if self._kind == "phase" else ""
+        text = units.label(name, unit) + colour + remark
         axes.set_ylabel(
-            units.label(name, unit) + colour + remark, fontsize=sheet.points(0.95),
-            color=style.PACKET, labelpad=sheet.points(0.4),
+            text, fontsize=sheet.fitting(text, self._panel.height, 0.95), color=style.PACKET,
+            labelpad=sheet.points(0.4),
         )
 
 
@@ -153,11 +154,14 @@ def draw_structure(sheet: Sheet, panel: Rect, scene: Scene) -> None:
     axes.yaxis.set_label_position("right")
     axes.set_xticks([])
     axes.yaxis.set_major_locator(round_ticks(panel.height / (3 * sheet.em)))
-    at_start = " at t = 0" if scene.driven else ""
+    text = scene.units.label("V at t = 0" if scene.driven else "V", scene.units.energy)
     axes.set_ylabel(
-        scene.units.label(f"V{at_start}", scene.units.energy), color=style.POTENTIAL,
-        fontsize=sheet.points(0.95), labelpad=sheet.points(0.4),
+        text, color=style.POTENTIAL, fontsize=sheet.fitting(text, panel.height, 0.95),
+        labelpad=sheet.points(0.4),
     )
+    if scene.mean_energy is None and not np.any(scene.potential):
+        # Nothing to read off: an axis of energies would only puzzle.
+        axes.yaxis.set_visible(False)
     _draw_ruler(sheet, panel, scene)
     _draw_detectors(axes, sheet, panel, scene)
 
@@ -165,6 +169,8 @@ def draw_structure(sheet: Sheet, panel: Rect, scene: Scene) -> None:
 def shortened(title: str, sheet: Sheet, panel: Rect) -> str:
     """Cut a title that would run into the time stamp."""
     room = panel.width - 14 * sheet.em
+    if room < 4 * sheet.em:
+        return ""
     if style.text_width(title, 1.1 * sheet.em) <= room:
         return title
     while title and style.text_width(title + "…", 1.1 * sheet.em) > room:

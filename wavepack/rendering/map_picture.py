@@ -1,6 +1,6 @@
 r"""The picture of a run in a plane: the packet as colour under the potential's lines."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -136,7 +136,9 @@ def draw_bar(sheet: Sheet, rect: Rect, kind: PictureKind, scale: PowerScale, sce
         name = "Re ψ" if kind == "real" else "|ψ|²"
         unit = units.amplitude(2) if kind == "real" else units.density(2)
         text = units.label(name, unit) + remark
-    axes.set_ylabel(text, fontsize=sheet.points(0.87), labelpad=sheet.points(0.3))
+    axes.set_ylabel(
+        text, fontsize=sheet.fitting(text, rect.height, 0.87), labelpad=sheet.points(0.3)
+    )
 
 
 def _structure(scene: Scene, panel: Rect, size: tuple[int, int], sheet: Sheet) -> Pixels:
@@ -361,11 +363,16 @@ def _beside(sheet: Sheet, panel: Rect, bar: Rect) -> _Layout:
 
 def _below(sheet: Sheet, room: Rect, panel: Rect, bar: Rect) -> _Layout:
     em = sheet.em
-    tall = round(4.6 * em)
+    gap, foot = round(4.2 * em), round(3.0 * em)
+    spare = sheet.height - room.top - panel.height - gap - foot
+    tall = min(max(spare, round(4.4 * em)), round(13 * em))
+    # Map and strip stand together, in the middle of what is left.
+    top = room.top + max(0, spare - tall) // 2
+    panel, bar = replace(panel, top=top), replace(bar, top=top)
     left, right = panel.left, bar.right + round((4.5 - VALUES_WIDTH) * em)
     if right - left < 16 * em:
         left, right = room.left, sheet.width - round((VALUES_WIDTH + 1) * em)
-    strip = Rect(left, sheet.height - tall - round(3.0 * em), right - left, tall)
+    strip = Rect(left, panel.bottom + gap, right - left, tall)
     return _Layout(panel, bar, strip, values_beside(strip, em))
 
 

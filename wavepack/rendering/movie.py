@@ -10,14 +10,12 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any, Final, TypeAlias
 
 import av
-import numpy as np
-import numpy.typing as npt
-from PIL import Image
 
 from wavepack.errors import MachineError, UsageError
 from wavepack.rendering.canvas import Pixels
 from wavepack.rendering.frames import Picture, picture_of
 from wavepack.rendering.from_run import curves_of, frames_of, scene_of
+from wavepack.rendering.palette import Palette
 from wavepack.rendering.scene import Curves, Frames, Scene
 
 if TYPE_CHECKING:
@@ -117,7 +115,7 @@ def write_movie(
     form = format_of(out)
     _check(form, size, fps, out)
     drawn = picture_of(scene, frames, curves, kind=picture, size=size, power=power)
-    palette = _palette(drawn, frames) if form.codec == "gif" else None
+    palette = _palette_of(drawn, frames) if form.codec == "gif" else None
     with _temporary(out) as partial:
         _encode(partial, form, drawn, frames, size, _rate(fps), scene.title, palette, progress)
     return out
@@ -168,7 +166,7 @@ def _temporary(out: Path) -> Iterator[Path]:
 
 def _encode(
     path: Path, form: Format, picture: Picture, frames: Frames, size: tuple[int, int],
-    rate: Fraction, title: str, palette: Image.Image | None, progress: Progress | None,
+    rate: Fraction, title: str, palette: Palette | None, progress: Progress | None,
 ) -> None:
     with av.open(
         str(path), "w", format=form.container, container_options=form.container_options
@@ -177,7 +175,7 @@ def _encode(
         stream = _stream(container, form, size, rate)
         for i, (time, frame) in enumerate(frames):
             pixels = picture.paint(time, frame)
-            video = _video_frame(pixels) if palette is None else _indexed_frame(pixels, palette)
+            video = _video_frame(pixels) if palette is None else palette.frame(pixels)
             video.pts, video.time_base = i, 1 / rate
             container.mux(stream.encode(video))
             if progress is not None:
@@ -211,35 +209,8 @@ def _video_frame(pixels: Pixels) -> av.VideoFrame:
     )
 
 
-def _palette(picture: Picture, frames: Frames) -> Image.Image:
-    """Return the 256 colours that serve first, middle and last frames best."""
+def _palette_of(picture: Picture, frames: Frames) -> Palette:
+    """Choose the colours that serve frames spread over the whole movie."""
     chosen = sorted({round(share * (len(frames) - 1)) for share in (0, 0.25, 0.5, 0.75, 1)})
-    painted = [
-        _rgb(picture.paint(float(frames.times[i]), frames.read(i)))[::2, ::2] for i in chosen
-    ]
-    return _shared_palette(np.concatenate(painted).reshape(-1, 3))
-
-
-def _shared_palette(colours: npt.NDArray[np.uint8]) -> Image.Image:
-    """Choose 256 colours out of many pixels.
-
-    Most pixels are paper and would take most of the palette. Each colour
-    therefore counts with the fourth root of its frequency, so that the shades
-    of the packet stay smooth.
-    """
-    coarse, counts = np.unique(colours & 0xFC, axis=0, return_counts=True)
-    weighted = np.repeat(coarse | (coarse >> 6), np.ceil(counts**0.25).astype(int), axis=0)
-    return Image.fromarray(weighted[None]).quantize(256, method=Image.Quantize.MEDIANCUT, kmeans=2)
-
-
-def _rgb(pixels: Pixels) -> npt.NDArray[np.uint8]:
-    return np.ascontiguousarray(pixels[..., :3])
-
-
-def _indexed_frame(pixels: Pixels, palette: Image.Image) -> av.VideoFrame:
-    """Turn a picture into places of a palette shared by all frames."""
-    indexed = Image.fromarray(_rgb(pixels)).quantize(palette=palette, dither=Image.Dither.NONE)
-    colours = np.full((256, 4), 255, np.uint8)
-    listed = np.array(palette.getpalette(), np.uint8).reshape(-1, 3)
-    colours[: len(listed), 1:] = listed
-    return av.VideoFrame.from_ndarray((np.asarray(indexed), colours), format="pal8")
+    painted = (picture.paint(float(frames.times[i]), frames.read(i)) for i in chosen)
+    return Palette.of(painted)
