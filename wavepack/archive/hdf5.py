@@ -1,7 +1,10 @@
 """How the archive opens, checks, mends and gives up HDF5 files."""
 
 import io
+import math
 import os
+from collections.abc import Iterator
+from contextlib import contextmanager
 from pathlib import Path
 from typing import Any, Final
 
@@ -14,6 +17,7 @@ from wavepack.errors import UsageError
 #: Bytes 40 to 48 of a superblock of version 0: where the file should end.
 STORED_END: Final = slice(40, 48)
 SIGNATURE: Final = b"\x89HDF\r\n\x1a\n\x00"
+FAR_END: Final = 2**50
 
 
 def open_file(path: Path, mode: str) -> h5py.File:
@@ -47,19 +51,28 @@ def check_schema(file: h5py.File, path: Path) -> None:
 
 
 def mend_length(path: Path) -> tuple[str, ...]:
-    """Pad a file that ends before the end it has noted, as a power cut may leave it.
+    """Make the end of a file fit the end it has noted; return a note on what was done.
 
-    Returns one note that says so, or none.
+    After a power cut a file may end too early: it is padded. A process killed
+    in the middle of a flush may have used room beyond the noted end, one chunk
+    a dataset at most: the note is moved behind it.
     """
     found, stored = path.stat().st_size, _stored_end(path)
-    if found >= stored:
+    if stored in {found, 0}:
         return ()
-    os.truncate(path, stored)
+    end = stored if found < stored else found + _room_of_chunks(path)
+    with path.open("r+b") as file:
+        file.seek(STORED_END.start)
+        file.write(end.to_bytes(8, "little"))
+        file.truncate(end)
     sync_file(path)
-    return (f"{path.name}: {stored - found} bytes were missing at its end; filled with zeros",)
+    if found < stored:
+        return (f"{path.name}: {stored - found} bytes were missing at its end; filled with zeros",)
+    return (f"{path.name}: was left in the middle of a write; what was whole is kept",)
 
 
-def open_to_read(path: Path) -> h5py.File:
+@contextmanager
+def open_to_read(path: Path) -> Iterator[h5py.File]:
     """Open a file that another process may be writing, or that was cut short.
 
     Raises
@@ -67,23 +80,23 @@ def open_to_read(path: Path) -> h5py.File:
     OSError
         If HDF5 cannot make sense of the file.
     """
-    try:
-        return open_file(path, "r")
-    except OSError:
-        if path.stat().st_size >= _stored_end(path):
-            raise
-        return h5py.File(_Padded(path, _stored_end(path)), "r")
+    if path.stat().st_size == _stored_end(path):
+        with open_file(path, "r") as file:
+            yield file
+    else:
+        with _Padded(path) as padded, h5py.File(padded, "r") as file:
+            yield file
 
 
 class _Padded(io.RawIOBase):
-    """A file that reads as zeros from where it breaks off to where it should end."""
+    """A file that seems to go on with zeros far beyond its end, and to know it."""
 
-    def __init__(self, path: Path, end: int) -> None:
+    def __init__(self, path: Path) -> None:
         self._file = path.open("rb")
-        self._place, self._end = 0, end
+        self._place = 0
 
     def seek(self, offset: int, whence: int = os.SEEK_SET) -> int:
-        start = {os.SEEK_SET: 0, os.SEEK_CUR: self._place, os.SEEK_END: self._end}[whence]
+        start = {os.SEEK_SET: 0, os.SEEK_CUR: self._place, os.SEEK_END: FAR_END}[whence]
         self._place = start + offset
         return self._place
 
@@ -91,15 +104,31 @@ class _Padded(io.RawIOBase):
         return self._place
 
     def readinto(self, buffer: Any) -> int:  # noqa: ANN401 - whatever holds bytes
-        size = len(buffer)
-        content = os.pread(self._file.fileno(), size, self._place)
-        buffer[:] = content.ljust(size, b"\0")
+        size, place = len(buffer), self._place
+        content = bytearray(os.pread(self._file.fileno(), size, place).ljust(size, b"\0"))
+        for offset, byte in enumerate(FAR_END.to_bytes(8, "little"), STORED_END.start - place):
+            if 0 <= offset < size:
+                content[offset] = byte
+        buffer[:] = content
         self._place += size
         return size
 
     def close(self) -> None:
         self._file.close()
         super().close()
+
+
+def _room_of_chunks(path: Path) -> int:
+    """Return the size of one chunk of every dataset that grows."""
+    sizes: list[int] = []
+
+    def add(_: str, item: h5py.Group | h5py.Dataset) -> None:
+        if isinstance(item, h5py.Dataset) and item.chunks:
+            sizes.append(math.prod(item.chunks) * item.dtype.itemsize)
+
+    with open_to_read(path) as file:
+        file.visititems(add)
+    return sum(sizes)
 
 
 def _stored_end(path: Path) -> int:

@@ -90,6 +90,7 @@ def _frames(file: h5py.File, plan: RunPlan) -> None:
         chunks=(rows, *plan.frame_shape),
         dtype=plan.frame_dtype,
     )
+    _index(dataset)
     _label(dataset, column, plan)
     _attach(dataset, [times, *scales])
 
@@ -119,8 +120,20 @@ def _empty(
         dtype=column.dtype,
         fillvalue=fillvalue,
     )
+    _index(dataset)
     _label(dataset, column, plan)
     return dataset
+
+
+def _index(dataset: h5py.Dataset) -> None:
+    """Make HDF5 lay out the index of the chunks, which it would do at the first row.
+
+    Done while the run is live, a kill could leave the dataset pointing to an
+    index that never reached the disk.
+    """
+    dataset.resize(1, axis=0)
+    dataset[0] = np.zeros(dataset.shape[1:], dataset.dtype)
+    dataset.resize(0, axis=0)
 
 
 def _unknown(group: h5py.Group, column: Column, plan: RunPlan, scales: list[h5py.Dataset]) -> None:
