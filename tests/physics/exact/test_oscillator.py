@@ -29,6 +29,12 @@ def test_packet_solves_its_equation(share: float) -> None:
     assert np.abs(residual).max() < 1e-6 * np.abs(psi).max()
 
 
+def test_packet_starts_as_a_free_one() -> None:
+    """At t = 0 the trap has not acted: the packet is the free one, phase and all."""
+    free = exact.free_packet(X, 0.0, 5.0, 2.0, 0.3, C, HBAR)
+    assert packet(0.0) == pytest.approx(free, abs=1e-14)
+
+
 @pytest.mark.parametrize("share", [0.0, 0.2, 0.75])
 def test_moments_of_the_packet(share: float) -> None:
     """Norm, mean, width and wave number of the wavefunction are the closed forms."""

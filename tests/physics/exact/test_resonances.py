@@ -94,6 +94,14 @@ def test_what_is_not_there_is_refused() -> None:
         exact.resonance_pole(bare, 0.1)
 
 
+def test_bound_state_is_no_resonance() -> None:
+    """A level below both leads lets nothing out: it is refused, not given a zero width."""
+    well = exact.uniform_stack([(10.0, -0.3)], C)
+    level = float(exact.finite_well_levels(0.3, 10.0, C)[0]) - 0.3
+    with pytest.raises(NumericalFault, match="does not decay"):
+        exact.resonance_pole(well, level + 1e-4)
+
+
 def test_low_shoulder_has_no_half_height() -> None:
     """A peak whose background never falls to its half is refused."""
     well = exact.uniform_stack([(10.0, -0.05)], C)

@@ -79,7 +79,7 @@ def resonance_pole(stack: Stack, near: complex, *, tolerance: float = 1e-13) -> 
             break
     else:
         raise NumericalFault(f"resonance pole near {near}: Newton's iteration did not settle")
-    if not energy.imag < 0:
+    if not -energy.imag > tolerance * abs(energy):
         raise NumericalFault(f"resonance pole near {near}: found {energy}, which does not decay")
     return Pole(energy.real, -2 * energy.imag)
 
