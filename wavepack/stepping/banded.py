@@ -45,8 +45,17 @@ class BandedFactor:
         """Return the solutions; ``right`` has shape (n,) or (n, many) and is kept."""
         y = self._solve_band(right)
         if self._corner_columns.size:
-            y -= self._z @ (self._small @ y[self._corner_columns])
+            # Column by column: a threaded product would wait for its threads longer.
+            for z, share in zip(self._z.T, self._corner_shares(y), strict=True):
+                y -= np.multiply.outer(z, share) if y.ndim > 1 else z * share
         return y
+
+    def _corner_shares(self, y: ComplexArray) -> list[ComplexArray]:
+        ends = y[self._corner_columns]
+        return [
+            sum(weight * end for weight, end in zip(row, ends, strict=True))
+            for row in self._small
+        ]
 
     def _factor(
         self, rows: ComplexArray, columns: ComplexArray, values: ComplexArray
