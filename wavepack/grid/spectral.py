@@ -20,7 +20,7 @@ from wavepack.grid.axis import Axis
 from wavepack.grid.grid import Grid
 
 
-def forward(psi: ComplexArray, axis: Axis, array_axis: int = -1) -> ComplexArray:
+def forward(psi: ComplexArray | RealArray, axis: Axis, array_axis: int = -1) -> ComplexArray:
     r"""Return the coefficients of every line along one axis.
 
     .. math::

@@ -24,7 +24,7 @@ from typing import Any, Final, TypeAlias
 import numpy as np
 import numpy.typing as npt
 
-from wavepack.arrays import ComplexArray, RealArray
+from wavepack.arrays import RealArray
 from wavepack.fields import Span
 from wavepack.physics.lattice import size
 
@@ -33,7 +33,7 @@ MOST_VALUES: Final = 1 << 26
 MOST_BYTES: Final = 1 << 29
 
 #: Values of either kind.
-Values: TypeAlias = RealArray | ComplexArray
+Values: TypeAlias = npt.NDArray[np.inexact[Any]]
 
 #: A function of positions, an open mesh or of equal shape.
 Spline: TypeAlias = Callable[[tuple[RealArray, ...]], RealArray]
