@@ -1,8 +1,10 @@
 """Free packets and simple structures, computed in closed form for the pictures."""
 
 from collections.abc import Callable
+from typing import Any
 
 import numpy as np
+import numpy.typing as npt
 import pytest
 
 from wavepack.rendering.scene import (
@@ -19,18 +21,19 @@ from wavepack.rendering.scene import (
 UNITS = Units("nm", "eV", "fs")
 
 
-def gaussian(x: np.ndarray, t: float, center: float, sigma: float, k: float) -> np.ndarray:
-    """Free packet of hbar = m = 1 that starts at ``center`` with width ``sigma``."""
+def gaussian(
+    x: npt.NDArray[Any], t: float, center: float, sigma: float, k: float
+) -> npt.NDArray[Any]:
+    """Return a free packet of hbar = m = 1 that starts at ``center`` with width ``sigma``."""
     width = sigma * (1 + 0.5j * t / sigma**2)
     place = x - center - k * t
     phase = k * (x - center) - 0.5 * k**2 * t
-    return (2 * np.pi) ** -0.25 * np.sqrt(sigma / width) / np.sqrt(sigma) * np.exp(
-        -(place**2) / (4 * sigma * width) + 1j * phase
-    )
+    height = (2 * np.pi) ** -0.25 * np.sqrt(sigma / width) / np.sqrt(sigma)
+    return np.asarray(height * np.exp(-(place**2) / (4 * sigma * width) + 1j * phase))
 
 
-def passing(times: np.ndarray) -> Curves:
-    """Transmission that sets in half way, and the rest reflected or held."""
+def passing(times: npt.NDArray[Any]) -> Curves:
+    """Return a transmission that sets in half way, and the rest reflected or held."""
     through = 0.35 / (1 + np.exp(-(times - 0.5 * times[-1]) / (0.06 * times[-1])))
     back = 0.6 / (1 + np.exp(-(times - 0.45 * times[-1]) / (0.05 * times[-1])))
     return Curves(
@@ -44,7 +47,7 @@ def passing(times: np.ndarray) -> Curves:
 
 
 def line_case(points: int = 1024, frames: int = 60) -> tuple[Scene, Frames, Curves]:
-    """A packet that runs over a barrier; part of it turns back."""
+    """Return a packet that runs over a barrier; part of it turns back."""
     x = np.linspace(-150, 150, points, endpoint=False)
     times = np.linspace(0, 240, frames)
     scene = Scene(
@@ -61,7 +64,7 @@ def line_case(points: int = 1024, frames: int = 60) -> tuple[Scene, Frames, Curv
         mean_energy=0.153,
     )
 
-    def read(i: int) -> np.ndarray:
+    def read(i: int) -> npt.NDArray[Any]:
         t = times[i]
         psi = gaussian(x, t, -70, 8, 0.8)
         back = gaussian(-x, t, -70, 8, 0.8)
@@ -70,10 +73,8 @@ def line_case(points: int = 1024, frames: int = 60) -> tuple[Scene, Frames, Curv
     return scene, Frames(times, read), passing(np.linspace(0, 240, 1500))
 
 
-def map_case(
-    shape: tuple[int, int] = (256, 192), frames: int = 40
-) -> tuple[Scene, Frames, Curves]:
-    """A packet in a plane and a screen with two slits."""
+def map_case(shape: tuple[int, int] = (256, 192), frames: int = 40) -> tuple[Scene, Frames, Curves]:
+    """Return a packet in a plane and a screen with two slits."""
     x = np.linspace(-60, 60, shape[0], endpoint=False)
     y = np.linspace(-45, 45, shape[1], endpoint=False)
     times = np.linspace(0, 90, frames)
@@ -91,15 +92,18 @@ def map_case(
         ),
         detectors=(Detector("far", "x", 30.0, "+x", (-30, 30)),),
         layers=(
-            Layer("x", -60, -48), Layer("x", 48, 60), Layer("y", -45, -36), Layer("y", 36, 45),
+            Layer("x", -60, -48),
+            Layer("x", 48, 60),
+            Layer("y", -45, -36),
+            Layer("y", 36, 45),
         ),
         mean_energy=0.3,
     )
 
-    def read(i: int) -> np.ndarray:
+    def read(i: int) -> npt.NDArray[Any]:
         t = times[i]
         along = gaussian(x, t, -35, 6, 0.8)
-        sides = sum(gaussian(y, t, c, 5, 0.0) for c in (-10, 10))
+        sides = gaussian(y, t, -10, 5, 0.0) + gaussian(y, t, 10, 5, 0.0)
         return np.asarray(along[:, None] * sides[None, :])
 
     return scene, Frames(times, read), passing(np.linspace(0, 90, 800))

@@ -6,11 +6,12 @@ few letters: milliseconds where drawing the plot anew takes a tenth of a second.
 """
 
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, Literal
 
 import numpy as np
 import numpy.typing as npt
 from matplotlib.axes import Axes
+from matplotlib.backend_bases import GraphicsContextBase
 from matplotlib.backends.backend_agg import FigureCanvasAgg, RendererAgg
 from matplotlib.colors import to_rgb
 from matplotlib.figure import Figure
@@ -68,7 +69,7 @@ class Sheet:
         """Size of text or width of a line in matplotlib's points."""
         return ems * self.em * 72 / _DPI
 
-    def axes(self, rect: Rect, **options: Any) -> Axes:
+    def axes(self, rect: Rect) -> Axes:
         """Add axes whose inside is exactly ``rect``."""
         axes = self.figure.add_axes(
             (
@@ -77,17 +78,31 @@ class Sheet:
                 rect.width / self.width,
                 rect.height / self.height,
             ),
-            **options,
         )
-        axes.tick_params(labelsize=self.points(0.87), length=self.points(0.28), pad=self.points(0.22))
+        axes.tick_params(
+            labelsize=self.points(0.87), length=self.points(0.28), pad=self.points(0.22)
+        )
         return axes
 
-    def text(self, left: float, baseline: float, text: str, **options: Any) -> Any:
+    def text(
+        self,
+        left: float,
+        baseline: float,
+        text: str,
+        *,
+        ems: float = 1.0,
+        ha: Literal["left", "center", "right"] = "left",
+        color: str = style.INK,
+    ) -> None:
         """Write at a pixel position; names of the user are never read as formulas."""
-        size = options.pop("ems", 1.0)
-        return self.figure.text(
-            left / self.width, 1 - baseline / self.height, text,
-            fontsize=self.points(size), parse_math=False, **options,
+        self.figure.text(
+            left / self.width,
+            1 - baseline / self.height,
+            text,
+            fontsize=self.points(ems),
+            ha=ha,
+            color=color,
+            parse_math=False,
         )
 
     def fitting(self, text: str, room: float, ems: float) -> float:
@@ -97,7 +112,7 @@ class Sheet:
 
     def render(self) -> Pixels:
         """Draw the figure, shape (height, width, 4)."""
-        canvas = FigureCanvasAgg(self.figure)
+        canvas: Any = FigureCanvasAgg(self.figure)
         canvas.draw()
         return np.array(canvas.buffer_rgba())
 
@@ -124,7 +139,9 @@ class Canvas:
     def __init__(self, background: Pixels) -> None:
         height, width = background.shape[:2]
         self._background = background
-        self._renderer = RendererAgg(width, height, _DPI)
+        # matplotlib gives its rasteriser no types.
+        make: Any = RendererAgg
+        self._renderer = make(width, height, _DPI)
         self.pixels: Pixels = np.asarray(self._renderer.buffer_rgba())
 
     def clear(self) -> None:
@@ -162,7 +179,7 @@ class Canvas:
         )
         self.pixels[top:bottom, left : right + 2] = np.asarray(patch)
 
-    def _pen(self, clip: Rect) -> Any:
+    def _pen(self, clip: Rect) -> GraphicsContextBase:
         gc = self._renderer.new_gc()
         height = self.pixels.shape[0]
         gc.set_clip_rectangle(
@@ -200,7 +217,9 @@ class Overlay:
         flat[self._where, :3] = mixed
 
 
-def polyline(points: RealArray, values: RealArray, columns: int) -> tuple[RealArray, RealArray]:
+def polyline(
+    points: RealArray, values: npt.NDArray[np.floating], columns: int
+) -> tuple[RealArray, npt.NDArray[np.floating]]:
     """Thin a curve to at most a low and a high point a column, keeping every peak.
 
     ``points`` are positions in columns, rising; returns positions and values.

@@ -1,13 +1,17 @@
 """Still pictures of a whole run, for pages and papers."""
 
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.backends.backend_agg import FigureCanvasAgg
+from matplotlib.cm import ScalarMappable
+from matplotlib.collections import QuadMesh
 from matplotlib.colors import ListedColormap
 from matplotlib.figure import Figure
+from matplotlib.image import AxesImage
+from matplotlib.layout_engine import ConstrainedLayoutEngine
 
 from wavepack.arrays import ComplexArray, RealArray
 from wavepack.errors import MachineError
@@ -95,19 +99,18 @@ def _save(figure: Figure, path: Path) -> Path:
     try:
         figure.savefig(path, dpi=_DPI)
     except OSError as error:
-        raise MachineError(f"{path}: the figure could not be written: {error.strerror}") from error
+        raise MachineError(
+            f"{path}: the figure could not be written: {error.strerror or error}"
+        ) from error
     return path
 
 
 def _line_overview(
     scene: Scene, frames: Frames, curves: Curves | None, scale: PowerScale
 ) -> Figure:
-    figure = Figure(figsize=(9.6, 6.0), layout="constrained")
-    figure.get_layout_engine().set(w_pad=0.08, h_pad=0.06, wspace=0.02, hspace=0.02)
+    figure = Figure(figsize=(9.6, 6.0), layout=_layout())
     columns = [1.0, 0.03] if curves is None else [1.0, 0.03, 0.36]
-    grid = figure.add_gridspec(
-        2, len(columns), width_ratios=columns, height_ratios=[0.34, 1.0]
-    )
+    grid = figure.add_gridspec(2, len(columns), width_ratios=columns, height_ratios=[0.34, 1.0])
     above, map_axes = figure.add_subplot(grid[0, 0]), figure.add_subplot(grid[1, 0])
     _title(above, scene)
     _draw_profile(above, scene)
@@ -118,6 +121,10 @@ def _line_overview(
         _draw_sideways(beside, curves, frames.times)
         _legend(beside, figure.add_subplot(grid[0, 2]), "lower left")
     return figure
+
+
+def _layout() -> ConstrainedLayoutEngine:
+    return ConstrainedLayoutEngine(w_pad=0.07, h_pad=0.06, wspace=0.02, hspace=0.02)
 
 
 def _title(axes: Axes, scene: Scene) -> None:
@@ -141,16 +148,29 @@ def _draw_profile(axes: Axes, scene: Scene) -> None:
     if scene.mean_energy is not None:
         axes.axhline(scene.mean_energy, color=style.ENERGY, linewidth=0.9, linestyle=(0, (7, 4)))
         axes.annotate(
-            "⟨E⟩", (1, scene.mean_energy), xycoords=("axes fraction", "data"), xytext=(-4, 2),
-            textcoords="offset points", ha="right", va="bottom", fontsize=8, color=style.ENERGY,
+            "⟨E⟩",
+            (1, scene.mean_energy),
+            xycoords=("axes fraction", "data"),
+            xytext=(-4, 2),
+            textcoords="offset points",
+            ha="right",
+            va="bottom",
+            fontsize=8,
+            color=style.ENERGY,
         )
     for region in scene.regions:
         colour = style.role_colour(region.role)
         for start, stop in intervals(region, scene):
             axes.axvspan(start, stop, 0.96, 1.0, color=colour, linewidth=0)
             axes.annotate(
-                region.name, ((start + stop) / 2, 0.94), xycoords=("data", "axes fraction"),
-                ha="center", va="top", fontsize=8, color=colour, parse_math=False,
+                region.name,
+                ((start + stop) / 2, 0.94),
+                xycoords=("data", "axes fraction"),
+                ha="center",
+                va="top",
+                fontsize=8,
+                color=colour,
+                parse_math=False,
             )
     at_start = " at t = 0" if scene.driven else ""
     axes.set_ylabel(
@@ -158,7 +178,7 @@ def _draw_profile(axes: Axes, scene: Scene) -> None:
     )
 
 
-def _draw_space_time(axes: Axes, scene: Scene, frames: Frames, scale: PowerScale) -> Any:
+def _draw_space_time(axes: Axes, scene: Scene, frames: Frames, scale: PowerScale) -> QuadMesh:
     x = scene.coordinates[0]
     stride = max(1, len(x) // _WIDEST)
     # One row a frame, thinned along x: small whatever the run's size.
@@ -166,7 +186,12 @@ def _draw_space_time(axes: Axes, scene: Scene, frames: Frames, scale: PowerScale
         [np.asarray(scale(density_of(frame)[::stride]), np.float32) for _, frame in frames]
     )
     image = axes.pcolormesh(
-        _edges(x[::stride]), _edges(frames.times), rows, cmap=_colour_map(), vmin=0, vmax=1,
+        _edges(x[::stride]),
+        _edges(frames.times),
+        rows,
+        cmap=_colour_map(),
+        vmin=0,
+        vmax=1,
         rasterized=True,
     )
     axes.set_xlim(*scene.extent(0))
@@ -177,9 +202,15 @@ def _draw_space_time(axes: Axes, scene: Scene, frames: Frames, scale: PowerScale
     for detector in scene.detectors:
         axes.axvline(detector.at, color=style.INK, linewidth=0.9, linestyle=(0, (1, 2)))
         axes.annotate(
-            with_arrow(detector.name, detector.toward), (detector.at, 0.985),
-            xycoords=("data", "axes fraction"), xytext=(3, 0), textcoords="offset points",
-            va="top", fontsize=8, parse_math=False, bbox=_halo(),
+            with_arrow(detector.name, detector.toward),
+            (detector.at, 0.985),
+            xycoords=("data", "axes fraction"),
+            xytext=(3, 0),
+            textcoords="offset points",
+            va="top",
+            fontsize=8,
+            parse_math=False,
+            bbox=_halo(),
         )
     _outline_potential(axes, scene)
     axes.tick_params(labelsize=9)
@@ -215,7 +246,9 @@ def _colour_map() -> ListedColormap:
     return ListedColormap(style.table_image(style.density_table()) / 255.0)
 
 
-def _colour_bar(figure: Figure, axes: Axes, image: Any, scale: PowerScale, scene: Scene) -> None:
+def _colour_bar(
+    figure: Figure, axes: Axes, image: ScalarMappable, scale: PowerScale, scene: Scene
+) -> None:
     ticks = scale.ticks(0.06)
     bar = figure.colorbar(image, cax=axes, ticks=[float(scale(np.array([v]))[0]) for v in ticks])
     bar.ax.set_yticklabels([number(value) for value in ticks], fontsize=8)
@@ -235,28 +268,30 @@ def _draw_sideways(axes: Axes, curves: Curves, times: RealArray) -> None:
     axes.set_xlabel("probability", fontsize=10)
 
 
-def _legend(axes: Axes, empty: Axes, place: str) -> None:
+def _legend(axes: Axes, empty: Axes, place: Literal["lower left", "center left"]) -> None:
     """Name the curves in an empty panel, where they can hide nothing."""
     empty.set_axis_off()
     legend = empty.legend(
-        handles=axes.get_legend_handles_labels()[0], loc=place, fontsize=9, frameon=False,
-        handlelength=2.4, borderaxespad=0.0,
+        handles=axes.get_legend_handles_labels()[0],
+        loc=place,
+        fontsize=9,
+        frameon=False,
+        handlelength=2.4,
+        borderaxespad=0.0,
     )
     for text in legend.get_texts():
         text.set_parse_math(False)
 
 
-def _map_overview(
-    scene: Scene, frames: Frames, curves: Curves | None, scale: PowerScale
-) -> Figure:
+def _map_overview(scene: Scene, frames: Frames, curves: Curves | None, scale: PowerScale) -> Figure:
     spans = [stop - start for start, stop in (scene.extent(0), scene.extent(1))]
     # Three maps side by side; the page is as tall as their proportions ask.
     tall = min(max(3.15 * spans[1] / spans[0], 1.4), 7.0)
     lower = 0.0 if curves is None else 2.1
-    figure = Figure(figsize=(11.0, tall + lower + 1.1), layout="constrained")
-    figure.get_layout_engine().set(w_pad=0.06, h_pad=0.06, wspace=0.02, hspace=0.02)
+    figure = Figure(figsize=(11.0, tall + lower + 1.1), layout=_layout())
     grid = figure.add_gridspec(
-        1 if curves is None else 2, 3,
+        1 if curves is None else 2,
+        3,
         height_ratios=[1.0] if curves is None else [tall, lower - 0.4],
     )
     stamp = time_format(frames.times, scene.units.time)
@@ -267,8 +302,14 @@ def _map_overview(
         axes.set_title(when, loc="right", fontsize=10)
         if column == 0:
             axes.annotate(
-                scene.title, (0, 1), xycoords="axes fraction", xytext=(0, 24),
-                textcoords="offset points", fontsize=12, parse_math=False, annotation_clip=False,
+                scene.title,
+                (0, 1),
+                xycoords="axes fraction",
+                xytext=(0, 24),
+                textcoords="offset points",
+                fontsize=12,
+                parse_math=False,
+                annotation_clip=False,
             )
         if column == 2:
             _colour_bar(figure, axes.inset_axes((1.04, 0, 0.045, 1)), image, scale, scene)
@@ -282,12 +323,18 @@ def _map_overview(
 
 def _draw_snapshot(
     axes: Axes, scene: Scene, frame: RealArray | ComplexArray, scale: PowerScale, *, first: bool
-) -> Any:
+) -> AxesImage:
     strides = [max(1, len(points) // 800) for points in scene.coordinates]
     shares = scale(density_of(frame)[:: strides[0], :: strides[1]]).T
     image = axes.imshow(
-        shares, origin="lower", extent=(*scene.extent(0), *scene.extent(1)), cmap=_colour_map(),
-        vmin=0, vmax=1, interpolation="bilinear", aspect="equal",
+        shares,
+        origin="lower",
+        extent=(*scene.extent(0), *scene.extent(1)),
+        cmap=_colour_map(),
+        vmin=0,
+        vmax=1,
+        interpolation="bilinear",
+        aspect="equal",
     )
     draw_structure(axes, scene, 10.0)
     axes.set_xlim(*scene.extent(0))
@@ -318,7 +365,7 @@ def _draw_along(axes: Axes, scene: Scene, frames: Frames, curves: Curves) -> Non
 
 
 def _spectrum(scene: Scene, spectrum: Spectrum) -> Figure:
-    figure = Figure(figsize=(7.6, 4.6), layout="constrained")
+    figure = Figure(figsize=(7.6, 4.6), layout=_layout())
     axes = figure.add_subplot()
     weight = axes.twinx()
     weight.fill_between(
@@ -333,13 +380,22 @@ def _spectrum(scene: Scene, spectrum: Spectrum) -> Figure:
     # The curve belongs in front of the packet's weight, whose axes came second.
     axes.set_zorder(weight.get_zorder() + 1)
     axes.plot(
-        spectrum.energies, spectrum.transmission, color=style.role_colour("transmitted"),
+        spectrum.energies,
+        spectrum.transmission,
+        color=style.role_colour("transmitted"),
         linewidth=1.8,
     )
     if not np.any(np.isfinite(spectrum.transmission)):
         axes.text(
-            0.5, 0.5, spectrum.reason or "no transmission by energy", ha="center", va="center",
-            transform=axes.transAxes, fontsize=9, wrap=True, parse_math=False,
+            0.5,
+            0.5,
+            spectrum.reason or "no transmission by energy",
+            ha="center",
+            va="center",
+            transform=axes.transAxes,
+            fontsize=9,
+            wrap=True,
+            parse_math=False,
         )
     axes.set_xlim(float(spectrum.energies[0]), float(spectrum.energies[-1]))
     largest = float(np.nanmax(spectrum.transmission, initial=1.0))

@@ -111,8 +111,11 @@ def spectrum_of(run: "Run", detector: str) -> Spectrum:
             f"spectrum: no detector {detector!r} with energies in {run.folder}; it has: {found}"
         )
     columns = ("energy", "transmission", "incident")
-    arrays = (run.read(f"detectors/{detector}/{name}") for name in columns)
-    return Spectrum(detector, *arrays, reason=_reason(run, detector))
+    energies, transmission, incident = (
+        run.read(f"detectors/{detector}/{name}") for name in columns
+    )
+    reason = _reason(run, detector)
+    return Spectrum(detector, energies, transmission, incident, reason)
 
 
 def _reason(run: "Run", detector: str) -> str:

@@ -3,6 +3,7 @@ r"""The picture of a run along one axis: the packet over the potential."""
 from typing import Literal, TypeAlias
 
 import numpy as np
+import numpy.typing as npt
 from matplotlib.axes import Axes
 
 from wavepack.arrays import ComplexArray, RealArray
@@ -26,21 +27,27 @@ class LinePicture:
     """Paints frames of one axis: density, or real part in its envelope, or phase."""
 
     def __init__(
-        self, scene: Scene, frames: Frames, curves: Curves | None, kind: PictureKind,
-        size: tuple[int, int], peak: float, power: float,
+        self,
+        scene: Scene,
+        frames: Frames,
+        curves: Curves | None,
+        kind: PictureKind,
+        size: tuple[int, int],
+        peak: float,
+        power: float,
     ) -> None:
         self._scene, self._kind = scene, kind
         self._sheet = sheet = Sheet(size)
         self._density = PowerScale(peak, power)
         self._amplitude = PowerScale(peak**0.5, 2 * power)
         self._stamp = time_format(frames.times, scene.units.time)
-        self._panel, strip_rect = _layout(sheet, with_strip=curves is not None)
-        self._columns = _columns(scene, self._panel)
+        self.panel, strip_rect = _layout(sheet, with_strip=curves is not None)
+        self._columns = _columns(scene, self.panel)
         window = energy_window(scene.potential, scene.mean_energy)
         heights = np.clip((np.nan_to_num(scene.potential) - window[0]) / np.ptp(window), -1, 2)
-        rows = self._panel.bottom - self._panel.height * heights
+        rows = self.panel.bottom - self.panel.height * heights
         self._potential = np.stack([self._columns, rows], axis=1)
-        draw_structure(sheet, self._panel, scene)
+        draw_structure(sheet, self.panel, scene)
         self._draw_left_axis()
         self._strip = None
         if curves is not None and strip_rect is not None:
@@ -58,34 +65,35 @@ class LinePicture:
         if self._strip is not None:
             self._strip.paint(self.canvas, time)
         em = self._sheet.em
-        self.canvas.write(self._stamp(time), self._panel.right, round(1.3 * em), round(1.1 * em))
+        self.canvas.write(self._stamp(time), self.panel.right, round(1.3 * em), round(1.1 * em))
         return self.canvas.pixels
 
     def _paint_density(self, frame: RealArray | ComplexArray) -> None:
         curve = self._curve(self._density(density_of(frame)), 0.0)
-        self.canvas.fill(self._closed(curve), style.PACKET_FILL, 0.75, self._panel)
-        self.canvas.line(curve, style.PACKET, 0.13 * self._sheet.em, self._panel)
+        self.canvas.fill(self._closed(curve), style.PACKET_FILL, 0.75, self.panel)
+        self.canvas.line(curve, style.PACKET, 0.13 * self._sheet.em, self.panel)
 
     def _paint_real(self, frame: RealArray | ComplexArray) -> None:
         envelope = self._amplitude(np.sqrt(density_of(frame)))
         upper, lower = self._curve(envelope, 0.5), self._curve(-envelope, 0.5)
         around = np.concatenate([upper, lower[::-1]])
-        self.canvas.fill(around, style.PACKET_FILL, 0.6, self._panel)
+        self.canvas.fill(around, style.PACKET_FILL, 0.6, self.panel)
         wave = self._curve(self._amplitude(frame.real), 0.5)
-        self.canvas.line(wave, style.PACKET, 0.11 * self._sheet.em, self._panel)
+        self.canvas.line(wave, style.PACKET, 0.11 * self._sheet.em, self.panel)
 
     def _paint_phase(self, frame: RealArray | ComplexArray) -> None:
         curve = self._curve(self._density(density_of(frame)), 0.0)
-        panel = self._panel
+        panel = self.panel
         middles = panel.left + np.arange(panel.width) + 0.5
         heights = panel.bottom - np.interp(middles, curve[:, 0], curve[:, 1])
         nearest = np.clip(
             np.rint(np.interp(middles, self._columns, np.arange(len(self._columns)))).astype(int),
-            0, len(self._columns) - 1,
+            0,
+            len(self._columns) - 1,
         )
         table = style.phase_table()[-1]
         turns = np.angle(frame[nearest]) / (2 * np.pi) % 1.0
-        colours = table[(turns * len(table)).astype(int) % len(table)]
+        colours = table[np.rint(turns * len(table)).astype(int) % len(table)]
         image = self.canvas.pixels.view(np.uint32)[..., 0][panel.slices]
         covered = np.arange(panel.height, 0, -1)[:, None] - 0.5 < heights
         np.copyto(image, colours[None, :], where=covered)
@@ -94,29 +102,29 @@ class LinePicture:
             self.canvas.line(self._potential, style.POTENTIAL, 0.1 * self._sheet.em, panel)
         self.canvas.line(curve, style.INK, 0.1 * self._sheet.em, panel)
 
-    def _curve(self, shares: RealArray, base: float) -> RealArray:
+    def _curve(self, shares: npt.NDArray[np.float32], base: float) -> RealArray:
         """Turn scaled values into pixel positions; ``base`` is where zero stands."""
-        across, values = polyline(self._columns - self._panel.left, shares, self._panel.width)
+        across, values = polyline(self._columns - self.panel.left, shares, self.panel.width)
         reach = HEADROOM if base == 0 else HEADROOM / 2
-        rows = self._panel.bottom - self._panel.height * (base + reach * values)
-        return np.stack([across + self._panel.left, rows], axis=1)
+        rows = self.panel.bottom - self.panel.height * (base + reach * values)
+        return np.stack([across + self.panel.left, rows], axis=1)
 
     def _closed(self, curve: RealArray) -> RealArray:
-        floor = [[curve[-1, 0], self._panel.bottom], [curve[0, 0], self._panel.bottom]]
+        floor = [[curve[-1, 0], self.panel.bottom], [curve[0, 0], self.panel.bottom]]
         return np.concatenate([curve, floor])
 
     def _draw_left_axis(self) -> None:
         sheet, units = self._sheet, self._scene.units
-        axes = sheet.axes(self._panel)
+        axes = sheet.axes(self.panel)
         axes.set_xlim(*self._scene.extent(0))
         axes.set_ylim(0, 1)
-        axes.xaxis.set_major_locator(round_ticks(self._panel.width / (7 * sheet.em)))
+        axes.xaxis.set_major_locator(round_ticks(self.panel.width / (7 * sheet.em)))
         label_x_axis(axes, sheet, self._scene)
         scale = self._amplitude if self._kind == "real" else self._density
         name = "Re ψ" if self._kind == "real" else "|ψ|²"
         unit = units.amplitude(1) if self._kind == "real" else units.density(1)
         real = self._kind == "real"
-        ticks = scale.ticks((5 if real else 2.4) * sheet.em / self._panel.height)
+        ticks = scale.ticks((5 if real else 2.4) * sheet.em / self.panel.height)
         if real:
             ticks = sorted({*ticks, *(-tick for tick in ticks)})
         base, reach = (0.5, HEADROOM / 2) if self._kind == "real" else (0.0, HEADROOM)
@@ -126,7 +134,9 @@ class LinePicture:
         colour = " coloured by phase" if self._kind == "phase" else ""
         text = units.label(name, unit) + colour + remark
         axes.set_ylabel(
-            text, fontsize=sheet.fitting(text, self._panel.height, 0.95), color=style.PACKET,
+            text,
+            fontsize=sheet.fitting(text, self.panel.height, 0.95),
+            color=style.PACKET,
             labelpad=sheet.points(0.4),
         )
 
@@ -134,7 +144,8 @@ class LinePicture:
 def label_x_axis(axes: Axes, sheet: Sheet, scene: Scene) -> None:
     """Name the horizontal axis."""
     axes.set_xlabel(
-        scene.units.label("x", scene.units.length), fontsize=sheet.points(0.95),
+        scene.units.label("x", scene.units.length),
+        fontsize=sheet.points(0.95),
         labelpad=sheet.points(0.15),
     )
 
@@ -156,7 +167,9 @@ def draw_structure(sheet: Sheet, panel: Rect, scene: Scene) -> None:
     axes.yaxis.set_major_locator(round_ticks(panel.height / (3 * sheet.em)))
     text = scene.units.label("V at t = 0" if scene.driven else "V", scene.units.energy)
     axes.set_ylabel(
-        text, color=style.POTENTIAL, fontsize=sheet.fitting(text, panel.height, 0.95),
+        text,
+        color=style.POTENTIAL,
+        fontsize=sheet.fitting(text, panel.height, 0.95),
         labelpad=sheet.points(0.4),
     )
     if scene.mean_energy is None and not np.any(scene.potential):
@@ -185,9 +198,14 @@ def _draw_layers(axes: Axes, sheet: Sheet, panel: Rect, scene: Scene) -> None:
         width = (layer.stop - layer.start) / (high - low) * panel.width
         if style.text_width("absorber", 0.8 * sheet.em) < width:
             axes.annotate(
-                "absorber", ((layer.start + layer.stop) / 2, 1),
-                xycoords=("data", "axes fraction"), xytext=(0, -sheet.points(0.5)),
-                textcoords="offset points", ha="center", va="top", color=style.ABSORBER_EDGE,
+                "absorber",
+                ((layer.start + layer.stop) / 2, 1),
+                xycoords=("data", "axes fraction"),
+                xytext=(0, -sheet.points(0.5)),
+                textcoords="offset points",
+                ha="center",
+                va="top",
+                color=style.ABSORBER_EDGE,
                 fontsize=sheet.points(0.8),
             )
 
@@ -206,13 +224,23 @@ def _draw_energy(axes: Axes, sheet: Sheet, scene: Scene) -> None:
     if scene.mean_energy is None:
         return
     axes.axhline(
-        scene.mean_energy, color=style.ENERGY, linewidth=sheet.points(0.07), linestyle=(0, (7, 4)),
+        scene.mean_energy,
+        color=style.ENERGY,
+        linewidth=sheet.points(0.07),
+        linestyle=(0, (7, 4)),
         zorder=3,
     )
     axes.annotate(
-        "⟨E⟩", (1, scene.mean_energy), xycoords=("axes fraction", "data"),
-        xytext=(-sheet.points(0.4), sheet.points(0.18)), textcoords="offset points", ha="right",
-        va="bottom", fontsize=sheet.points(0.87), color=style.ENERGY, zorder=3,
+        "⟨E⟩",
+        (1, scene.mean_energy),
+        xycoords=("axes fraction", "data"),
+        xytext=(-sheet.points(0.4), sheet.points(0.18)),
+        textcoords="offset points",
+        ha="right",
+        va="bottom",
+        fontsize=sheet.points(0.87),
+        color=style.ENERGY,
+        zorder=3,
     )
 
 
@@ -234,9 +262,7 @@ def _draw_ruler(sheet: Sheet, panel: Rect, scene: Scene) -> None:
         width = (stop - start) / (high - low) * panel.width
         if style.text_width(name, 0.8 * sheet.em) < width:
             middle = panel.left + ((start + stop) / 2 - low) / (high - low) * panel.width
-            sheet.text(
-                middle, panel.top - 3.2 * thick, name, ems=0.8, ha="center", color=colour
-            )
+            sheet.text(middle, panel.top - 3.2 * thick, name, ems=0.8, ha="center", color=colour)
 
 
 def intervals(region: Region, scene: Scene) -> list[tuple[float, float]]:
@@ -247,7 +273,7 @@ def intervals(region: Region, scene: Scene) -> list[tuple[float, float]]:
         return [(low, high)] if high > low else []
     edges = np.flatnonzero(np.diff(np.concatenate([[0], region.mask.astype(np.int8), [0]])))
     x = scene.coordinates[0]
-    half = (scene.extent(0)[1] - x[-1])
+    half = scene.extent(0)[1] - x[-1]
     return [
         (float(x[a] - half), float(x[b - 1] + half))
         for a, b in zip(edges[::2], edges[1::2], strict=True)
@@ -259,8 +285,11 @@ def _draw_detectors(axes: Axes, sheet: Sheet, panel: Rect, scene: Scene) -> None
     low, high = scene.extent(0)
     for detector in sorted(scene.detectors, key=lambda d: d.at):
         axes.axvline(
-            detector.at, color=style.FAINT_INK, linewidth=sheet.points(0.08),
-            linestyle=(0, (1, 2)), zorder=2.5,
+            detector.at,
+            color=style.FAINT_INK,
+            linewidth=sheet.points(0.08),
+            linestyle=(0, (1, 2)),
+            zorder=2.5,
         )
         text = with_arrow(detector.name, detector.toward)
         half = style.text_width(text, 0.8 * sheet.em) / 2
@@ -268,7 +297,11 @@ def _draw_detectors(axes: Axes, sheet: Sheet, panel: Rect, scene: Scene) -> None
         if middle - half > taken:
             taken = middle + half + 0.5 * sheet.em
             sheet.text(
-                middle, panel.top - 2.2 * sheet.em, text, ems=0.8, ha="center",
+                middle,
+                panel.top - 2.2 * sheet.em,
+                text,
+                ems=0.8,
+                ha="center",
                 color=style.FAINT_INK,
             )
 

@@ -14,7 +14,15 @@ from wavepack.rendering import style
 from wavepack.rendering.canvas import Canvas, Overlay, Pixels, Rect, Sheet, round_ticks
 from wavepack.rendering.line_picture import PictureKind, shortened, with_arrow
 from wavepack.rendering.scales import PowerScale, energy_window, number
-from wavepack.rendering.scene import Curves, Detector, Frames, Region, Scene, density_of, time_format
+from wavepack.rendering.scene import (
+    Curves,
+    Detector,
+    Frames,
+    Region,
+    Scene,
+    density_of,
+    time_format,
+)
 from wavepack.rendering.strip import VALUES_WIDTH, Strip, values_beside
 
 #: Lines of equal potential are drawn from at most so many points an axis.
@@ -25,8 +33,14 @@ class MapPicture:
     """Paints frames of two axes: density, real part or phase as colour."""
 
     def __init__(
-        self, scene: Scene, frames: Frames, curves: Curves | None, kind: PictureKind,
-        size: tuple[int, int], peak: float, power: float,
+        self,
+        scene: Scene,
+        frames: Frames,
+        curves: Curves | None,
+        kind: PictureKind,
+        size: tuple[int, int],
+        peak: float,
+        power: float,
     ) -> None:
         self._scene, self._kind = scene, kind
         self._sheet = sheet = Sheet(size)
@@ -36,7 +50,7 @@ class MapPicture:
         self._stamp = time_format(frames.times, scene.units.time)
         bar_width = round((2.4 if kind == "phase" else 1.2) * sheet.em)
         layout = _layout(sheet, scene, bar_width, with_strip=curves is not None)
-        self._panel = layout.panel
+        self.panel = layout.panel
         self._right = layout.bar.right + round(4.5 * sheet.em)
         if layout.strip is not None:
             self._right = max(self._right, layout.strip.right)
@@ -49,12 +63,12 @@ class MapPicture:
         self.canvas = Canvas(sheet.render())
         if self._strip is not None:
             self._strip.draw_curves(sheet)
-        self._overlay = Overlay(_structure(scene, self._panel, size, sheet))
+        self._overlay = Overlay(_structure(scene, self.panel, size, sheet))
 
     def paint(self, time: float, frame: RealArray | ComplexArray) -> Pixels:
         """Return the picture of one state, valid until the next call."""
         self.canvas.clear()
-        image = self.canvas.pixels.view(np.uint32)[..., 0][self._panel.slices]
+        image = self.canvas.pixels.view(np.uint32)[..., 0][self.panel.slices]
         image[...] = self._colour(frame)
         self._overlay.paint(self.canvas.pixels)
         if self._strip is not None:
@@ -67,27 +81,29 @@ class MapPicture:
         """Return the panel's colours, shape (height, width)."""
         if self._kind == "real":
             values = self._scale(self._spread(frame.real))
-            return style.signed_table()[_index((values + 1) / 2, style.LEVELS + 1)]
+            return style.signed_table()[
+                _index((values + np.float32(1)) * np.float32(0.5), style.LEVELS + 1)
+            ]
         brightness = self._scale(self._spread(density_of(frame)))
         if self._kind == "density":
             return style.density_table()[_index(brightness, style.LEVELS)]
         table = style.phase_table()
         turns = np.arctan2(self._spread(frame.imag), self._spread(frame.real))
         turns *= np.float32(table.shape[1] / (2 * np.pi))
-        hues = turns.astype(np.int32) % table.shape[1]
-        return table.reshape(-1)[_index(brightness, table.shape[0]) * table.shape[1] + hues]
+        # A whole circle and a half step more: positive, so that the cut rounds.
+        hues = (turns + np.float32(table.shape[1] + 0.5)).astype(np.int32) % table.shape[1]
+        places = _index(brightness, table.shape[0]) * table.shape[1] + hues
+        return np.asarray(table.reshape(-1)[places])
 
     def _spread(self, values: npt.NDArray[Any]) -> npt.NDArray[np.float32]:
         """Bring values of the grid, x by y, to the pixels of the panel, y upward."""
         upright = np.ascontiguousarray(values.T[::-1], np.float32)
-        size = self._panel.width, self._panel.height
-        image = Image.fromarray(upright).resize(
-            size, Image.Resampling.BILINEAR, reducing_gap=2.0
-        )
-        return np.asarray(image)
+        size = self.panel.width, self.panel.height
+        image = Image.fromarray(upright).resize(size, Image.Resampling.BILINEAR, reducing_gap=2.0)
+        return np.asarray(image, np.float32)
 
     def _draw_frame(self) -> None:
-        sheet, scene, panel = self._sheet, self._scene, self._panel
+        sheet, scene, panel = self._sheet, self._scene, self.panel
         wide = Rect(panel.left, panel.top, self._right - panel.left, panel.height)
         sheet.text(panel.left, 1.7 * sheet.em, shortened(scene.title, sheet, wide), ems=1.1)
         axes = sheet.axes(panel)
@@ -115,18 +131,25 @@ def draw_bar(sheet: Sheet, rect: Rect, kind: PictureKind, scale: PowerScale, sce
         table = style.phase_table()
         around = np.roll(table, table.shape[1] // 2, axis=1)
         axes.imshow(
-            style.table_image(np.ascontiguousarray(around.T)), aspect="auto", origin="lower",
+            style.table_image(np.ascontiguousarray(around.T)),
+            aspect="auto",
+            origin="lower",
             extent=(0, 1, -1, 1),
         )
-        axes.set_yticks([-1, -0.5, 0, 0.5, 1], ["−π", "−π/2", "0", "π/2", "π"])
+        axes.set_yticks(
+            [-1, -0.5, 0, 0.5, 1], [f"{style.MINUS}π", f"{style.MINUS}π/2", "0", "π/2", "π"]
+        )
         axes.set_xticks([])
         text = f"phase of ψ; brightness: |ψ|²{remark}"
     else:
         table = style.signed_table() if kind == "real" else style.density_table()
         low = -1 if kind == "real" else 0
         axes.imshow(
-            style.table_image(table)[:, None], aspect="auto", origin="lower",
-            extent=(0, 1, low, 1), interpolation="bilinear",
+            style.table_image(table)[:, None],
+            aspect="auto",
+            origin="lower",
+            extent=(0, 1, low, 1),
+            interpolation="bilinear",
         )
         ticks = scale.ticks(1.7 * sheet.em / rect.height * (1 - low))
         ticks = sorted({*ticks, *(low * tick for tick in ticks)}) if low else ticks
@@ -185,7 +208,12 @@ def _draw_potential(axes: Axes, scene: Scene, points: float) -> None:
         return
     levels = least + (most - least) * np.array([0.1, 0.3, 0.5, 0.7, 0.9])
     axes.contour(
-        x, y, potential, levels=levels, colors=style.POTENTIAL, linewidths=0.07 * points,
+        x,
+        y,
+        potential,
+        levels=levels,
+        colors=style.POTENTIAL,
+        linewidths=0.07 * points,
         alpha=0.75,
     )
     mean = scene.mean_energy
@@ -229,7 +257,12 @@ def _draw_region(axes: Axes, scene: Scene, region: Region, points: float) -> Non
     if region.mask is not None:
         x, y = scene.coordinates
         axes.contour(
-            x, y, region.mask.T.astype(float), levels=[0.5], colors=colour, linewidths=width,
+            x,
+            y,
+            region.mask.T.astype(float),
+            levels=[0.5],
+            colors=colour,
+            linewidths=width,
             linestyles="dashed",
         )
         return
@@ -264,7 +297,7 @@ class _Labels:
     """Writes names where they hide no other name."""
 
     def __init__(self, axes: Axes, scene: Scene, points: float, panel: Rect | None) -> None:
-        self._axes, self._scene, self._panel = axes, scene, panel
+        self._axes, self._scene, self.panel = axes, scene, panel
         self._size = 0.8 * points
         self._em = 0.8 * points * 100 / 72
         self._taken: list[tuple[float, float, float, float]] = []
@@ -287,16 +320,23 @@ class _Labels:
         self._write(with_arrow(detector.name, detector.toward), places, style.INK)
 
     def _write(self, text: str, places: list[tuple[float, float, int, int]], colour: str) -> None:
-        if self._panel is None:
+        if self.panel is None:
             return
         for x, y, right, up in places:
             box, across, row = self._box(text, x, y, right, up)
             if self._free(box):
                 self._taken.append(box)
                 self._axes.text(
-                    across, row, text, transform=None, fontsize=self._size, color=colour,
-                    ha="left" if right > 0 else "right", va="bottom" if up > 0 else "top",
-                    parse_math=False, path_effects=[withStroke(linewidth=2, foreground="white")],
+                    across,
+                    row,
+                    text,
+                    transform=None,
+                    fontsize=self._size,
+                    color=colour,
+                    ha="left" if right > 0 else "right",
+                    va="bottom" if up > 0 else "top",
+                    parse_math=False,
+                    path_effects=[withStroke(linewidth=2, foreground="white")],
                 )
                 return
 
@@ -312,8 +352,12 @@ class _Labels:
 
     def _free(self, box: tuple[float, float, float, float]) -> bool:
         inside = self._axes.bbox
-        if not (inside.x0 <= box[0] and box[2] <= inside.x1 and inside.y0 <= box[1]
-                and box[3] <= inside.y1):
+        if not (
+            inside.x0 <= box[0]
+            and box[2] <= inside.x1
+            and inside.y0 <= box[1]
+            and box[3] <= inside.y1
+        ):
             return False
         return all(
             box[2] < other[0] or other[2] < box[0] or box[3] < other[1] or other[3] < box[1]
@@ -335,7 +379,9 @@ def _layout(sheet: Sheet, scene: Scene, bar_width: int, *, with_strip: bool) -> 
     """Return the boxes; the strip beside the map or below it, as leaves more map."""
     em = sheet.em
     room = Rect(
-        round(5 * em), round(2.8 * em), sheet.width - round(11 * em) - bar_width,
+        round(5 * em),
+        round(2.8 * em),
+        sheet.width - round(11 * em) - bar_width,
         sheet.height - round(6.2 * em),
     )
     if not with_strip or min(room.width / 24, room.height / 16) < em:

@@ -1,15 +1,16 @@
 """Frames of a run to one movie file, read and written one at a time."""
 
 import contextlib
-import os
 import secrets
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
 from fractions import Fraction
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, Final, TypeAlias
+from typing import TYPE_CHECKING, Final, TypeAlias, cast
 
 import av
+from av.container import OutputContainer
+from av.video.stream import VideoStream
 
 from wavepack.errors import MachineError, UsageError
 from wavepack.rendering.canvas import Pixels
@@ -44,11 +45,16 @@ class Format:
 FORMATS: Final[dict[str, Format]] = {
     # Browsers and slides play H.264 in this form, and begin before all is loaded.
     ".mp4": Format(
-        "mp4", "libx264", "yuv420p", {"crf": "18", "preset": "veryfast"},
+        "mp4",
+        "libx264",
+        "yuv420p",
+        {"crf": "18", "preset": "veryfast"},
         {"movflags": "+faststart"},
     ),
     ".webm": Format(
-        "webm", "libvpx-vp9", "yuv420p",
+        "webm",
+        "libvpx-vp9",
+        "yuv420p",
         {"crf": "28", "b": "0", "deadline": "realtime", "cpu-used": "6", "row-mt": "1"},
     ),
     ".gif": Format("gif", "gif", "pal8"),
@@ -93,8 +99,15 @@ def render_movie(
         If the file cannot be written.
     """
     return write_movie(
-        scene_of(run), frames_of(run), out, curves=curves_of(run), size=size, fps=fps,
-        picture=picture, power=power, progress=progress,
+        scene_of(run),
+        frames_of(run),
+        out,
+        curves=curves_of(run),
+        size=size,
+        fps=fps,
+        picture=picture,
+        power=power,
+        progress=progress,
     )
 
 
@@ -157,16 +170,25 @@ def _temporary(out: Path) -> Iterator[Path]:
     partial = out.with_name(f".{out.stem}.{secrets.token_hex(4)}.partial{out.suffix}")
     try:
         yield partial
-        os.replace(partial, out)
+        partial.replace(out)
     except OSError as error:
-        raise MachineError(f"{out}: the movie could not be written: {error.strerror}") from error
+        raise MachineError(
+            f"{out}: the movie could not be written: {error.strerror or error}"
+        ) from error
     finally:
         partial.unlink(missing_ok=True)
 
 
 def _encode(
-    path: Path, form: Format, picture: Picture, frames: Frames, size: tuple[int, int],
-    rate: Fraction, title: str, palette: Palette | None, progress: Progress | None,
+    path: Path,
+    form: Format,
+    picture: Picture,
+    frames: Frames,
+    size: tuple[int, int],
+    rate: Fraction,
+    title: str,
+    palette: Palette | None,
+    progress: Progress | None,
 ) -> None:
     with av.open(
         str(path), "w", format=form.container, container_options=form.container_options
@@ -188,8 +210,11 @@ _BT709: Final = 1
 _LIMITED: Final = 1
 
 
-def _stream(container: Any, form: Format, size: tuple[int, int], rate: Fraction) -> Any:
-    stream = container.add_stream(form.codec, rate=rate, options=form.options)
+def _stream(
+    container: OutputContainer, form: Format, size: tuple[int, int], rate: Fraction
+) -> VideoStream:
+    # The library's types offer every kind of stream; these codecs make videos.
+    stream = cast("VideoStream", container.add_stream(form.codec, rate=rate, options=form.options))
     stream.width, stream.height = size
     stream.pix_fmt = form.pixels
     stream.time_base = stream.codec_context.time_base = 1 / rate
@@ -204,7 +229,9 @@ def _stream(container: Any, form: Format, size: tuple[int, int], rate: Fraction)
 def _video_frame(pixels: Pixels) -> av.VideoFrame:
     frame = av.VideoFrame.from_ndarray(pixels, format="rgba")
     return frame.reformat(
-        format="yuv420p", dst_colorspace="ITU709", dst_color_range="MPEG",
+        format="yuv420p",
+        dst_colorspace="ITU709",
+        dst_color_range="MPEG",
         interpolation="AREA",
     )
 

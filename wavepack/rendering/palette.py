@@ -2,7 +2,7 @@
 
 from collections.abc import Iterable
 from dataclasses import dataclass
-from typing import Self
+from typing import Any, Self
 
 import av
 import numpy as np
@@ -43,23 +43,25 @@ class Palette:
         colours[: len(listed)] = listed
         every = _fine(np.arange(counts.size))
         _, nearest = cKDTree(colours).query(every)
-        return cls(colours, nearest.astype(np.uint8))
+        return cls(colours, np.asarray(nearest, np.uint8))
 
     def frame(self, picture: Pixels) -> av.VideoFrame:
         """Return a picture as places of the palette."""
         listed = np.full((256, 4), 255, np.uint8)
         listed[:, 1:] = self.colours
-        return av.VideoFrame.from_ndarray((self.nearest[_coarse(picture)], listed), format="pal8")
+        # The library's own types leave out this form, which its docstring describes.
+        pair: Any = (self.nearest[_coarse(picture)], listed)
+        return av.VideoFrame.from_ndarray(pair, format="pal8")
 
 
 def _coarse(picture: Pixels) -> npt.NDArray[np.uint32]:
     """Pack the upper bits of red, green and blue into one number."""
     red, green, blue = ((picture[..., i] >> (8 - _BITS)).astype(np.uint32) for i in range(3))
-    return red << 2 * _BITS | green << _BITS | blue
+    return np.asarray(red << 2 * _BITS | green << _BITS | blue, np.uint32)
 
 
 def _fine(coarse: npt.NDArray[np.integer]) -> Pixels:
     """Return the colour that a coarse number stands for, white staying white."""
     shifts = np.array([2 * _BITS, _BITS, 0])
     channels = (coarse[:, None] >> shifts) & ((1 << _BITS) - 1)
-    return np.rint(channels * (255 / ((1 << _BITS) - 1))).astype(np.uint8)
+    return np.asarray(np.rint(channels * (255 / ((1 << _BITS) - 1))), np.uint8)

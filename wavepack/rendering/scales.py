@@ -8,6 +8,7 @@ import numpy.typing as npt
 
 from wavepack.arrays import RealArray
 from wavepack.errors import UsageError
+from wavepack.rendering import style
 from wavepack.rendering.scene import Frames, density_of
 
 #: The peak of the packet stands this high in a one-dimensional panel.
@@ -29,10 +30,10 @@ class PowerScale:
         scaled = np.asarray(values, np.float32) / np.float32(self.peak)
         scaled = np.fmin(np.fmax(scaled, np.float32(-1)), np.float32(1))
         if self.power == 1:
-            return scaled
+            return np.asarray(scaled)
         size = np.abs(scaled)
         root = np.sqrt(size) if self.power == 0.5 else size ** np.float32(self.power)
-        return np.copysign(root, scaled)
+        return np.asarray(np.copysign(root, scaled))
 
     def ticks(self, gap: float) -> list[float]:
         """Round values from 0 to the peak, at least ``gap`` apart on the scale."""
@@ -67,10 +68,10 @@ def _even_ticks(peak: float, gap: float) -> list[float]:
 def number(value: float) -> str:
     """Write a tick: plainly, or with a power of ten where that would be long."""
     if value == 0 or 1e-3 <= abs(value) < 1e5:
-        return f"{value:g}".replace("-", "−")
+        return f"{value:g}".replace("-", style.MINUS)
     digits, exponent = f"{value:.2e}".split("e")
     raised = str(int(exponent)).translate(str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹"))
-    return f"{float(digits):g}·10{raised}".replace("-", "−")
+    return f"{float(digits):g}·10{raised}".replace("-", style.MINUS)
 
 
 def highest_density(frames: Frames) -> float:

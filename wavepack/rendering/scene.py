@@ -23,13 +23,13 @@ class Units:
         return f"{quantity} ({unit})" if unit else quantity
 
     def density(self, dimensions: int) -> str:
-        """Unit of a density: one over length, or over its square."""
+        """Return the unit of a density: one over length, or over its square."""
         if not self.length:
             return ""
         return f"{self.length}⁻¹" if dimensions == 1 else f"{self.length}⁻²"
 
     def amplitude(self, dimensions: int) -> str:
-        """Unit of the wavefunction, the square root of that of the density."""
+        """Return the unit of the wavefunction, the square root of that of the density."""
         if not self.length:
             return ""
         return f"{self.length}⁻¹ᐟ²" if dimensions == 1 else f"{self.length}⁻¹"
@@ -96,7 +96,7 @@ class Scene:
         return len(self.coordinates)
 
     def extent(self, axis: int) -> tuple[float, float]:
-        """Ends of the cells along one axis: half a spacing beyond the points."""
+        """Return the ends of the cells along one axis: half a spacing beyond the points."""
         points = self.coordinates[axis]
         half = (points[-1] - points[0]) / max(len(points) - 1, 1) / 2 or 0.5
         return float(points[0] - half), float(points[-1] + half)

@@ -40,7 +40,9 @@ class Strip:
         seen = slice(rect.top, rect.bottom), slice(rect.left, column)
         canvas.pixels[seen] = self._whole[seen]
         bar = np.array([[column, rect.top], [column, rect.bottom]], float)
-        canvas.line(bar, style.FAINT_INK, 1.0, Rect(rect.left, rect.top, rect.width + 1, rect.height))
+        canvas.line(
+            bar, style.FAINT_INK, 1.0, Rect(rect.left, rect.top, rect.width + 1, rect.height)
+        )
         self._write_values(canvas, time)
 
     def _write_values(self, canvas: Canvas, time: float) -> None:
@@ -69,7 +71,9 @@ def _axes(sheet: Sheet, rect: Rect, units: Units, span: tuple[float, float]) -> 
     axes.set_ylim(-0.04, 1.04)
     axes.set_yticks([0, 0.5, 1], ["0", "0.5", "1"])
     axes.xaxis.set_major_locator(round_ticks(rect.width / (4 * sheet.em)))
-    axes.set_xlabel(units.label("t", units.time), fontsize=sheet.points(0.87), labelpad=sheet.points(0.1))
+    axes.set_xlabel(
+        units.label("t", units.time), fontsize=sheet.points(0.87), labelpad=sheet.points(0.1)
+    )
     axes.grid(visible=True, color=style.GRID, linewidth=0.6)
     axes.set_axisbelow(True)
     return axes
@@ -85,8 +89,11 @@ def draw_curves(axes: Axes, curves: Curves, width: float, *, upright: bool = Fal
     for row, curve in enumerate(curves.curves):
         values = curve.values[::stride]
         axes.plot(
-            *((values, times) if upright else (times, values)), color=colour_of(curve, row),
-            linestyle=style.role_dashes(curve.role), linewidth=width, label=curve.name,
+            *((values, times) if upright else (times, values)),
+            color=colour_of(curve, row),
+            linestyle=style.role_dashes(curve.role),
+            linewidth=width,
+            label=curve.name,
         )
 
 

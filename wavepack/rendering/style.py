@@ -24,8 +24,12 @@ from wavepack.arrays import RealArray
 #: One packed colour a pixel: bytes red, green, blue, opacity.
 ColourTable: TypeAlias = npt.NDArray[np.uint32]
 
+#: A line style of matplotlib: a name, or an offset and lengths of strokes and gaps.
+Dashes: TypeAlias = str | tuple[int, tuple[float, ...]]
+
 PAPER: Final = "#ffffff"
 INK: Final = "#22272e"
+MINUS: Final = "\N{MINUS SIGN}"
 FAINT_INK: Final = "#6b7480"
 GRID: Final = "#d9dde2"
 PACKET: Final = "#17509e"
@@ -37,7 +41,7 @@ ABSORBER: Final = "#eceaf2"
 ABSORBER_EDGE: Final = "#7d769a"
 
 #: Colour and dashes of the probability of each role, and of what is lost.
-ROLES: Final[Mapping[str, tuple[str, Any]]] = MappingProxyType(
+ROLES: Final[Mapping[str, tuple[str, Dashes]]] = MappingProxyType(
     {
         "transmitted": ("#00796b", "-"),
         "reflected": ("#c2407e", (0, (5, 1.6))),
@@ -55,14 +59,27 @@ _PHASE_SHADES: Final = 128
 
 #: Anchors of the density map, from paper to ink, of falling lightness.
 _DENSITY_ANCHORS: Final = (
-    "#ffffff", "#d8e8f6", "#9fcbe6", "#57a5cf", "#2877b8", "#2a4b95", "#2c2560", "#170f2b",
+    "#ffffff",
+    "#d8e8f6",
+    "#9fcbe6",
+    "#57a5cf",
+    "#2877b8",
+    "#2a4b95",
+    "#2c2560",
+    "#170f2b",
 )
 _DIVERGING_ANCHORS: Final = (
-    "#5c2a00", "#b5651d", "#efc08a", "#ffffff", "#93bfe6", "#2f6fb3", "#0d2a5c",
+    "#5c2a00",
+    "#b5651d",
+    "#efc08a",
+    "#ffffff",
+    "#93bfe6",
+    "#2f6fb3",
+    "#0d2a5c",
 )
 
 #: Defaults of every matplotlib figure drawn here.
-SETTINGS: Final[Mapping[str, Any]] = MappingProxyType(
+SETTINGS: Final[Mapping[Any, Any]] = MappingProxyType(
     {
         "font.family": ["DejaVu Sans"],
         "figure.facecolor": PAPER,
@@ -93,7 +110,7 @@ def applied() -> Iterator[None]:
     """
     with mpl.rc_context(), warnings.catch_warnings():
         mpl.rcdefaults()
-        mpl.rcParams.update(SETTINGS)
+        mpl.rcParams.update(dict(SETTINGS))
         warnings.filterwarnings("ignore", message=".*Glyph", category=UserWarning)
         yield
 
@@ -103,7 +120,7 @@ def role_colour(role: str) -> str:
     return ROLES.get(role, ROLES["none"])[0]
 
 
-def role_dashes(role: str) -> Any:
+def role_dashes(role: str) -> Dashes:
     """Return the dash pattern of a region's role."""
     return ROLES.get(role, ROLES["none"])[1]
 
@@ -150,23 +167,23 @@ def phase_table() -> ColourTable:
     across = radius * np.sqrt(1 - tilt**2) * np.cos(phase)
     circle = np.stack([lightness, across, radius * np.sin(phase)], axis=-1)
     shade = np.linspace(0, 1, _PHASE_SHADES)[:, None, None]
-    paper = _oklab(PAPER)
+    paper = oklab(PAPER)
     return _pack(_rgb(paper + shade * (circle - paper)))
 
 
 def packed(colour: str) -> np.uint32:
     """Return one ``#rrggbb`` colour as a packed pixel."""
-    return np.uint32(_pack(_rgb(_oklab(colour)[None]))[0])
+    return np.uint32(_pack(_rgb(oklab(colour)[None]))[0])
 
 
 def table_image(table: ColourTable) -> npt.NDArray[np.uint8]:
     """Unpack a table into bytes, shape (..., 4)."""
-    return table.view(np.uint8).reshape(*table.shape, 4)
+    return np.ascontiguousarray(table).view(np.uint8).reshape(*table.shape, 4)
 
 
 def _ramp(anchors: Sequence[str], levels: int) -> ColourTable:
     """Return evenly seen steps through the anchors."""
-    points = np.array([_oklab(anchor) for anchor in anchors])
+    points = np.array([oklab(anchor) for anchor in anchors])
     # Spaced by seen distance, not by count: no anchor shows as a band.
     lengths = np.linalg.norm(np.diff(points, axis=0), axis=1)
     along = np.concatenate([[0.0], np.cumsum(lengths)])
@@ -198,7 +215,7 @@ _TO_LAB: Final = np.array(
 )
 
 
-def _oklab(colour: str) -> RealArray:
+def oklab(colour: str) -> RealArray:
     """Return the OKLab coordinates of one ``#rrggbb`` colour [Ottosson2020]_."""
     srgb = np.array([int(colour[i : i + 2], 16) / 255 for i in (1, 3, 5)])
     linear = np.where(srgb > 0.04045, ((srgb + 0.055) / 1.055) ** 2.4, srgb / 12.92)
