@@ -180,7 +180,7 @@ class Canvas:
         self.pixels[top:bottom, left : right + 2] = np.asarray(patch)
 
     def _pen(self, clip: Rect) -> GraphicsContextBase:
-        gc = self._renderer.new_gc()
+        gc: GraphicsContextBase = self._renderer.new_gc()
         height = self.pixels.shape[0]
         gc.set_clip_rectangle(
             Bbox.from_extents(clip.left, height - clip.bottom, clip.right, height - clip.top)

@@ -5,7 +5,9 @@ from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
+import numpy.typing as npt
 
+from wavepack.arrays import RealArray
 from wavepack.errors import UsageError
 from wavepack.physics.expressions import compile_expression
 from wavepack.rendering.scene import (
@@ -44,9 +46,9 @@ def scene_of(run: "Run") -> Scene:
         potential,
         Units(*(run.units.get(name, "") for name in ("length", "energy", "time"))),
         title=run.title,
-        regions=tuple(_region(fact, coordinates) for fact in facts.get("regions") or ()),
+        regions=_regions(facts.get("regions") or (), coordinates),
         detectors=tuple(_detector(fact) for fact in facts.get("detectors") or ()),
-        layers=tuple(_layer(fact, coordinates) for fact in facts.get("absorber") or ()),
+        layers=tuple(_layer(fact, coordinates) for fact in facts.get("absorbers") or ()),
         mean_energy=facts.get("mean_energy"),
         driven=bool(facts.get("driven", False)),
     )
@@ -89,7 +91,8 @@ def region_curves_of(run: "Run") -> Curves | None:
     """Return the probability of every region against time; None without regions."""
     roles = {fact["name"]: fact.get("role", "none") for fact in run.facts.get("regions") or ()}
     times, curves = np.empty(0), []
-    for name in run.region_names:
+    # In the scenario's order; the file keeps its groups by the alphabet.
+    for name in [name for name in roles if name in run.region_names]:
         times = run.read(f"regions/{name}/time")
         values = run.read(f"regions/{name}/probability")
         curves.append(Curve(name, roles.get(name, "none"), values))
@@ -128,15 +131,27 @@ def _reason(run: "Run", detector: str) -> str:
     return str(reason or "")
 
 
-def _region(fact: Mapping[str, Any], coordinates: Sequence[np.ndarray]) -> Region:
-    spans = {axis: _span(span) for axis, span in (fact.get("spans") or {}).items()}
-    mask = None
-    if fact.get("where"):
-        expression = compile_expression(fact["where"], parameters=fact.get("parameters", {}))
-        mesh = dict(zip(("x", "y"), np.ix_(*coordinates), strict=False))
-        shape = tuple(len(points) for points in coordinates)
-        mask = np.broadcast_to(np.asarray(expression.evaluate(**mesh)) != 0, shape)
-    return Region(fact["name"], fact.get("role", "none"), spans, mask)
+def _regions(
+    facts: Sequence[Mapping[str, Any]], coordinates: Sequence[RealArray]
+) -> tuple[Region, ...]:
+    regions = []
+    for fact in facts:
+        spans = {axis: _span(span) for axis, span in (fact.get("spans") or {}).items()}
+        mask = _mask(fact["where"], spans, coordinates) if fact.get("where") else None
+        regions.append(Region(fact["name"], fact.get("role", "none"), spans, mask))
+    return tuple(regions)
+
+
+def _mask(
+    where: str, spans: Mapping[str, tuple[float, float]], coordinates: Sequence[RealArray]
+) -> npt.NDArray[np.bool_]:
+    """Return the points of the frames that an expression and the spans both hold."""
+    mesh = dict(zip(("x", "y"), np.ix_(*coordinates), strict=False))
+    shape = tuple(len(points) for points in coordinates)
+    inside = np.broadcast_to(np.asarray(compile_expression(where).evaluate(**mesh)) != 0, shape)
+    for axis, (low, high) in spans.items():
+        inside = inside & (low <= mesh[axis]) & (mesh[axis] <= high)
+    return np.asarray(inside)
 
 
 def _detector(fact: Mapping[str, Any]) -> Detector:
@@ -145,7 +160,7 @@ def _detector(fact: Mapping[str, Any]) -> Detector:
     return Detector(fact["name"], fact["axis"], fact["at"], fact.get("toward") or "", span)
 
 
-def _layer(fact: Mapping[str, Any], coordinates: Sequence[np.ndarray]) -> Layer:
+def _layer(fact: Mapping[str, Any], coordinates: Sequence[RealArray]) -> Layer:
     start, stop = _span((fact["from"], fact["to"]))
     points = coordinates["xy".index(fact["axis"])]
     return Layer(fact["axis"], max(start, float(points[0])), min(stop, float(points[-1])))
