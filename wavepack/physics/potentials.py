@@ -170,8 +170,9 @@ def total(
     particle: Particle,
     time: float = 0.0,
     phase: str = "during",
+    rows: slice = slice(None),
 ) -> RealArray:
-    """Return V [energy] of all pieces that act, drives included, on the grid.
+    """Return V [energy] of all pieces that act, drives included, on rows of axis 0.
 
     Parameters
     ----------
@@ -185,20 +186,23 @@ def total(
         When [time].
     phase : str
         ``"before"`` the start, for eigenstates, or ``"during"`` the run.
+    rows : slice
+        Rows of axis 0.
 
     Raises
     ------
     ScenarioError
         If V is not finite somewhere.
     """
-    values = np.zeros(grid.shape)
+    first, last, _ = rows.indices(grid.shape[0])
+    values = np.zeros((last - first, *grid.shape[1:]))
     acting = [piece for piece in pieces if piece.acts in ("always", phase)]
-    for rows in blocks(grid, slice(None), BLOCK_SAMPLES):
+    for block in blocks(grid, rows, BLOCK_SAMPLES):
         for piece in acting:
-            part = sample(piece, grid, particle, rows)
+            part = sample(piece, grid, particle, block)
             if piece.drive is not None:
                 part *= piece.drive.bound(particle.hbar).factor(time)
-            values[rows] += part
+            values[block.start - first : block.stop - first] += part
     return values
 
 
