@@ -88,6 +88,8 @@ def check_rows(file: h5py.File, floor: dict[str, int], frame: Frame) -> None:
     """All rows promised are there, and every row that counts is right."""
     counts = {name: committed_rows(file[name]) for name in stream_names(file)}
     assert all(counts[name] >= count for name, count in floor.items())
+    assert len(file.attrs["scenario_sha256"]) == 64
+    assert file["scenario"][()].startswith(b"title = ")
     rows = np.arange(counts["series"])
     series = file["series"]
     assert np.array_equal(series["time"][: len(rows)], rows)

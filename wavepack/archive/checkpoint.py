@@ -150,7 +150,7 @@ def _check_version(file: h5py.File, path: Path) -> None:
 def _datasets(group: h5py.Group) -> Iterator[tuple[str, tuple[str, npt.NDArray[Any]]]]:
     for item in group.values():
         if isinstance(item, h5py.Dataset):
-            yield item.name.lstrip("/"), (str(item.attrs["kind"]), np.asarray(item[()]))
+            yield item.name.lstrip("/"), (str(item.attrs["kind"]), np.asarray(item[...]))
         else:
             yield from _datasets(item)
 

@@ -210,7 +210,7 @@ def _run(folder: Path, file: h5py.File) -> Run:
         units={name: str(attributes[f"{name}_unit"]) for name in quantities},
         facts=json.loads(attributes["facts"]),
         scenario_text=file["scenario"][()].decode(),
-        scenario_sha256=_text(attributes["scenario_sha256"]),
+        scenario_sha256=attributes["scenario_sha256"].decode(),
         wavepack_version=str(attributes["wavepack_version"]),
         frame_kind="psi" if "psi" in file["frames"] else "density",
         axes={name: file[name][()] for name in POSITIONS if name in file},
@@ -235,10 +235,6 @@ def _patiently(path: Path, read: Callable[[h5py.File], T]) -> T:
                 raise MachineError(f"{path}: cannot be read: {reason}") from error
             time.sleep(pause)
     raise AssertionError
-
-
-def _text(value: str | bytes) -> str:
-    return value.decode() if isinstance(value, bytes) else str(value)
 
 
 def _xarray_side() -> ModuleType:

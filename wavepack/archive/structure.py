@@ -59,6 +59,7 @@ def _describe(file: h5py.File, plan: RunPlan) -> None:
     file.attrs["title"] = plan.title
     file.attrs["schema_version"] = SCHEMA_VERSION
     file.attrs["wavepack_version"] = plan.wavepack_version
+    # Of fixed length, so that it can change in place: text of variable length moves to a heap.
     file.attrs["scenario_sha256"] = np.bytes_(plan.scenario_sha256)
     for quantity in ("length", "energy", "time", "mass"):
         file.attrs[f"{quantity}_unit"] = plan.units[quantity]

@@ -185,7 +185,7 @@ class RunWriter:
             if len(content) > room:
                 raise ValueError(f"scenario: {len(content)} bytes, there is room for {room}")
             file["scenario"][()] = content
-            # Of equal length, so that it changes in place.
+            # Changed in place: deleting and creating it anew could cost the file.
             file.attrs.modify("scenario_sha256", np.bytes_(text_sha256(text)))
             file.flush()
 
@@ -281,7 +281,13 @@ class RunWriter:
     ) -> None:
         self.close()
 
+    def _live(self) -> h5py.File:
+        if self._file is None:
+            raise MachineError(f"{self.path}: closed, or abandoned after an error")
+        return self._file
+
     def _stream(self, name: str) -> Stream:
+        self._live()
         if name not in self._streams:
             raise ValueError(f"{name}: not part of this run")
         return self._streams[name]
@@ -309,11 +315,10 @@ class RunWriter:
     @contextmanager
     def _guard(self) -> Iterator[h5py.File]:
         """Hand out the file; abandon it when the machine refuses."""
-        if self._file is None:
-            raise MachineError(f"{self.path}: closed, or abandoned after an error")
+        file = self._live()
         try:
             with machine_errors(self.path, self.path.parent):
-                yield self._file
+                yield file
         except MachineError:
             self.abandon()
             raise
