@@ -85,7 +85,7 @@ def test_killed_ten_times_equals_unbroken(tmp_path: Path, make_plan: Plan) -> No
     assert np.array_equal(run.read("frames/psi")[:, 0], np.arange(0, end, 5) + 1j)
 
 
-#: Writes frames until the system refuses to let run.h5 grow past 300 kB.
+#: Writes frames until the system refuses to let run.h5 grow past 1.5 MB.
 FILLING = """
 import resource, signal, sys
 import numpy as np
@@ -93,7 +93,7 @@ from wavepack.archive.writer import RunWriter
 from wavepack.errors import MachineError
 signal.signal(signal.SIGXFSZ, signal.SIG_IGN)
 writer = RunWriter.reopen(sys.argv[1])
-resource.setrlimit(resource.RLIMIT_FSIZE, (300_000, 300_000))
+resource.setrlimit(resource.RLIMIT_FSIZE, (1_500_000, 1_500_000))
 try:
     for row in range(1000):
         writer.append_frame(row, np.full(2048, row + 1j))
