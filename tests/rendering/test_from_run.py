@@ -29,13 +29,15 @@ MakeCase = Callable[..., tuple[Scene, Frames, Curves]]
 FACTS: dict[str, Any] = {
     "regions": [
         {"name": "source", "role": "reflected", "spans": {"x": [None, -20.0]}},
-        {"name": "far", "role": "none", "spans": {}, "where": "x > 100"},
+        {"name": "far", "role": "none", "spans": {}, "where": "x > edge"},
+        {"name": "odd", "role": "none", "spans": {}, "where": "x > unheard_of"},
     ],
     "detectors": [
         {"name": "exit", "axis": "x", "at": 80.0, "toward": "+x"},
         {"name": "plain", "axis": "x", "at": 90.0, "toward": None},
     ],
     "absorbers": [{"axis": "x", "from": -150.0, "to": -120.0}],
+    "parameters": {"edge": 100.0},
     "mean_energy": 0.153,
     "driven": True,
 }
@@ -86,6 +88,7 @@ def test_the_scene_is_what_was_stored(run: Run, line: MakeCase) -> None:
     assert (scene.units.length, scene.units.energy, scene.units.time) == ("nm", "eV", "fs")
     assert scene.title == stored.title
     assert scene.regions[0].spans == {"x": (-math.inf, -20.0)}
+    assert [region.name for region in scene.regions] == ["source", "far"]
     assert scene.regions[1].mask is not None
     assert np.array_equal(scene.regions[1].mask, stored.coordinates[0] > 100)
     assert scene.detectors[0] == Detector("exit", "x", 80.0, "+x")

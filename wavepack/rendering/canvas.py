@@ -199,22 +199,24 @@ class Canvas:
 
 
 class Overlay:
-    """Lines that stay on top of changing colours, kept as the pixels they touch."""
+    """Lines that stay on top of changing colours."""
 
     def __init__(self, drawing: Pixels) -> None:
-        flat = drawing.reshape(-1, 4)
-        self._where = np.flatnonzero(flat[:, 3])
-        touched = flat[self._where]
-        opacity = touched[:, 3:4].astype(np.float32) / 255
-        self._clear = 1 - opacity
-        # Half a level more, so that the cut to whole levels rounds.
-        self._ink = touched[:, :3].astype(np.float32) * opacity + np.float32(0.5)
+        rows, columns = (np.flatnonzero(drawing[..., 3].any(axis=1 - i)) for i in (0, 1))
+        self._part = (
+            slice(int(rows[0]), int(rows[-1]) + 1),
+            slice(int(columns[0]), int(columns[-1]) + 1),
+        )
+        touched = drawing[self._part].copy()
+        self._opacity = Image.fromarray(touched[..., 3].copy())
+        touched[..., 3] = 255
+        self._ink = Image.fromarray(touched)
 
     def paint(self, pixels: Pixels) -> None:
         """Lay the lines over the image."""
-        flat = pixels.reshape(-1, 4)
-        mixed = flat[self._where, :3] * self._clear + self._ink
-        flat[self._where, :3] = mixed
+        below = Image.fromarray(np.ascontiguousarray(pixels[self._part]))
+        below.paste(self._ink, (0, 0), self._opacity)
+        pixels[self._part] = np.asarray(below)
 
 
 def polyline(

@@ -9,7 +9,7 @@ import numpy.typing as npt
 
 from wavepack.arrays import RealArray
 from wavepack.errors import UsageError
-from wavepack.physics.expressions import compile_expression
+from wavepack.physics.expressions import Expression, ExpressionError, compile_expression
 from wavepack.rendering.scene import (
     Curve,
     Curves,
@@ -46,7 +46,7 @@ def scene_of(run: "Run") -> Scene:
         potential,
         Units(*(run.units.get(name, "") for name in ("length", "energy", "time"))),
         title=run.title,
-        regions=_regions(facts.get("regions") or (), coordinates),
+        regions=_regions(facts, coordinates),
         detectors=tuple(_detector(fact) for fact in facts.get("detectors") or ()),
         layers=tuple(_layer(fact, coordinates) for fact in facts.get("absorbers") or ()),
         mean_energy=facts.get("mean_energy"),
@@ -131,24 +131,29 @@ def _reason(run: "Run", detector: str) -> str:
     return str(reason or "")
 
 
-def _regions(
-    facts: Sequence[Mapping[str, Any]], coordinates: Sequence[RealArray]
-) -> tuple[Region, ...]:
-    regions = []
-    for fact in facts:
+def _regions(facts: Mapping[str, Any], coordinates: Sequence[RealArray]) -> tuple[Region, ...]:
+    regions, parameters = [], facts.get("parameters") or {}
+    for fact in facts.get("regions") or ():
         spans = {axis: _span(span) for axis, span in (fact.get("spans") or {}).items()}
-        mask = _mask(fact["where"], spans, coordinates) if fact.get("where") else None
+        mask = None
+        if fact.get("where"):
+            try:
+                expression = compile_expression(fact["where"], ("x", "y"), parameters)
+            except ExpressionError:
+                # A picture can do without an outline that it does not understand.
+                continue
+            mask = _mask(expression, spans, coordinates)
         regions.append(Region(fact["name"], fact.get("role", "none"), spans, mask))
     return tuple(regions)
 
 
 def _mask(
-    where: str, spans: Mapping[str, tuple[float, float]], coordinates: Sequence[RealArray]
+    where: Expression, spans: Mapping[str, tuple[float, float]], coordinates: Sequence[RealArray]
 ) -> npt.NDArray[np.bool_]:
     """Return the points of the frames that an expression and the spans both hold."""
     mesh = dict(zip(("x", "y"), np.ix_(*coordinates), strict=False))
     shape = tuple(len(points) for points in coordinates)
-    inside = np.broadcast_to(np.asarray(compile_expression(where).evaluate(**mesh)) != 0, shape)
+    inside = np.broadcast_to(np.asarray(where.evaluate(**mesh)) != 0, shape)
     for axis, (low, high) in spans.items():
         inside = inside & (low <= mesh[axis]) & (mesh[axis] <= high)
     return np.asarray(inside)

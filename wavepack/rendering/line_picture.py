@@ -47,8 +47,11 @@ class LinePicture:
         heights = np.clip((np.nan_to_num(scene.potential) - window[0]) / np.ptp(window), -1, 2)
         rows = self.panel.bottom - self.panel.height * heights
         self._potential = np.stack([self._columns, rows], axis=1)
-        draw_structure(sheet, self.panel, scene)
+        room = self.panel.width - (26 if kind == "phase" else 14) * sheet.em
+        draw_structure(sheet, self.panel, scene, room)
         self._draw_left_axis()
+        if kind == "phase":
+            draw_phase_key(sheet, self.panel)
         self._strip = None
         if curves is not None and strip_rect is not None:
             end = float(frames.times[-1])
@@ -141,6 +144,22 @@ class LinePicture:
         )
 
 
+def draw_phase_key(sheet: Sheet, panel: Rect) -> None:
+    """Draw the circle of phase colours, unrolled, beside the time stamp."""
+    em = sheet.em
+    bar = Rect(panel.right - round(20 * em), round(0.9 * em), round(6 * em), round(0.8 * em))
+    if bar.left < panel.left + 12 * em:
+        return
+    axes = sheet.axes(bar)
+    around = np.roll(style.phase_table()[-1], style.phase_table().shape[1] // 2)
+    axes.imshow(style.table_image(around)[None], aspect="auto", interpolation="nearest")
+    axes.set_xticks([])
+    axes.set_yticks([])
+    foot = bar.bottom - 0.05 * em
+    sheet.text(bar.left - 0.4 * em, foot, f"phase {style.MINUS}π", ems=0.87, ha="right")
+    sheet.text(bar.right + 0.4 * em, foot, "π", ems=0.87)
+
+
 def label_x_axis(axes: Axes, sheet: Sheet, scene: Scene) -> None:
     """Name the horizontal axis."""
     axes.set_xlabel(
@@ -150,15 +169,16 @@ def label_x_axis(axes: Axes, sheet: Sheet, scene: Scene) -> None:
     )
 
 
-def draw_structure(sheet: Sheet, panel: Rect, scene: Scene) -> None:
+def draw_structure(sheet: Sheet, panel: Rect, scene: Scene, title_room: float) -> None:
     """Draw what stands still: title, potential, energy, absorbers, regions, detectors."""
-    sheet.text(panel.left, 1.7 * sheet.em, shortened(scene.title, sheet, panel), ems=1.1)
+    sheet.text(panel.left, 1.7 * sheet.em, shortened(scene.title, sheet, title_room), ems=1.1)
     axes = sheet.axes(panel)
     axes.set_xlim(*scene.extent(0))
     window = energy_window(scene.potential, scene.mean_energy)
     axes.set_ylim(*window)
     _draw_layers(axes, sheet, panel, scene)
-    visible = np.clip(np.nan_to_num(scene.potential), window[0] - 9, window[1] + 9)
+    beyond = window[1] - window[0]
+    visible = np.clip(np.nan_to_num(scene.potential), window[0] - beyond, window[1] + beyond)
     _draw_potential(axes, scene.coordinates[0], visible, window[0], sheet)
     _draw_energy(axes, sheet, scene)
     axes.yaxis.tick_right()
@@ -179,9 +199,8 @@ def draw_structure(sheet: Sheet, panel: Rect, scene: Scene) -> None:
     _draw_detectors(axes, sheet, panel, scene)
 
 
-def shortened(title: str, sheet: Sheet, panel: Rect) -> str:
+def shortened(title: str, sheet: Sheet, room: float) -> str:
     """Cut a title that would run into the time stamp."""
-    room = panel.width - 14 * sheet.em
     if room < 4 * sheet.em:
         return ""
     if style.text_width(title, 1.1 * sheet.em) <= room:

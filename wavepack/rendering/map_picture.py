@@ -84,28 +84,32 @@ class MapPicture:
             return style.signed_table()[
                 _index((values + np.float32(1)) * np.float32(0.5), style.LEVELS + 1)
             ]
-        brightness = self._scale(self._spread(density_of(frame)))
         if self._kind == "density":
-            return style.density_table()[_index(brightness, style.LEVELS)]
+            shares = self._scale(self._spread(density_of(frame)))
+            return np.asarray(style.density_table().take(_index(shares, style.LEVELS)))
+        real, imaginary = self._spread(frame.real), self._spread(frame.imag)
+        # Where several points share a pixel their waves may cancel; their densities do not.
+        shrunk = frame.shape[0] > self.panel.width or frame.shape[1] > self.panel.height
+        density = self._spread(density_of(frame)) if shrunk else real**2 + imaginary**2
         table = style.phase_table()
-        turns = np.arctan2(self._spread(frame.imag), self._spread(frame.real))
-        turns *= np.float32(table.shape[1] / (2 * np.pi))
+        turns = np.arctan2(imaginary, real) * np.float32(table.shape[1] / (2 * np.pi))
         # A whole circle and a half step more: positive, so that the cut rounds.
         hues = (turns + np.float32(table.shape[1] + 0.5)).astype(np.int32) % table.shape[1]
-        places = _index(brightness, table.shape[0]) * table.shape[1] + hues
-        return np.asarray(table.reshape(-1)[places])
+        places = _index(self._scale(density), table.shape[0]) * table.shape[1] + hues
+        return np.asarray(table.reshape(-1).take(places))
 
     def _spread(self, values: npt.NDArray[Any]) -> npt.NDArray[np.float32]:
         """Bring values of the grid, x by y, to the pixels of the panel, y upward."""
-        upright = np.ascontiguousarray(values.T[::-1], np.float32)
-        size = self.panel.width, self.panel.height
-        image = Image.fromarray(upright).resize(size, Image.Resampling.BILINEAR, reducing_gap=2.0)
-        return np.asarray(image, np.float32)
+        image = Image.fromarray(np.ascontiguousarray(values, np.float32))
+        # Turned upright after scaling: the grid may hold far more points than the panel.
+        size = self.panel.height, self.panel.width
+        scaled = image.resize(size, Image.Resampling.BILINEAR, reducing_gap=2.0)
+        return np.ascontiguousarray(np.asarray(scaled, np.float32).T[::-1])
 
     def _draw_frame(self) -> None:
         sheet, scene, panel = self._sheet, self._scene, self.panel
-        wide = Rect(panel.left, panel.top, self._right - panel.left, panel.height)
-        sheet.text(panel.left, 1.7 * sheet.em, shortened(scene.title, sheet, wide), ems=1.1)
+        room = self._right - panel.left - 14 * sheet.em
+        sheet.text(panel.left, 1.7 * sheet.em, shortened(scene.title, sheet, room), ems=1.1)
         axes = sheet.axes(panel)
         axes.set_xlim(*scene.extent(0))
         axes.set_ylim(*scene.extent(1))
