@@ -124,7 +124,7 @@ def test_full_disk_costs_nothing_written_before(tmp_path: Path, make_plan: Plan)
     assert "closed, or abandoned after an error" in closed
     written = int(refused.split()[0])
     assert written >= 5
-    assert np.array_equal(open_run(tmp_path).read("frames/psi")[:, 7], np.arange(written) + 1 + 1j)
+    assert np.array_equal(open_run(tmp_path).read("frames/psi")[:, 7], np.arange(written) + 1j)
     with RunWriter.reopen(tmp_path) as writer:
         writer.append_frame(written, np.zeros(2048))
     assert len(open_run(tmp_path)) == written + 1

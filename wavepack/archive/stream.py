@@ -1,5 +1,6 @@
 """Datasets that grow together along time, and their buffer."""
 
+import math
 from collections.abc import Mapping
 from typing import Any
 
@@ -18,11 +19,13 @@ class Stream:
             for name, dataset in group.items()
             if name != "time" and dataset.maxshape[0] is None
         }
+        # Asked of HDF5 once: every row is checked against them.
+        datasets = {"time": self._time, **self._values}
+        self._forms = {name: (item.dtype, item.shape[1:]) for name, item in datasets.items()}
         self._rows: dict[str, list[npt.NDArray[Any]]] = {}
         self.columns = tuple(self._values)
         self.row_bytes = sum(
-            dataset.dtype.itemsize * int(np.prod(dataset.shape[1:]))
-            for dataset in (self._time, *self._values.values())
+            dtype.itemsize * math.prod(shape) for dtype, shape in self._forms.values()
         )
         self.on_disk = committed_rows(group)
         self.kept = 0
@@ -34,8 +37,8 @@ class Stream:
 
     def keep(self, rows: Mapping[str, npt.ArrayLike]) -> None:
         """Keep rows of all columns and their times for the next writing."""
-        if rows.keys() != {"time", *self.columns}:
-            raise ValueError(f"columns {sorted(rows)}, need {sorted(('time', *self.columns))}")
+        if rows.keys() != self._forms.keys():
+            raise ValueError(f"columns {sorted(rows)}, need {sorted(self._forms)}")
         arrays = {name: self._fitting(name, value) for name, value in rows.items()}
         lengths = {len(array) for array in arrays.values()}
         if len(lengths) > 1:
@@ -51,7 +54,7 @@ class Stream:
         stop = self.on_disk + self.kept
         for name, dataset in self._values.items():
             dataset.resize(stop, axis=0)
-            dataset[self.on_disk : stop] = np.concatenate(self._rows[name])
+            dataset[self.on_disk : stop] = _joined(self._rows[name])
         self._time.resize(stop, axis=0)
 
     def write_times(self) -> None:
@@ -68,16 +71,20 @@ class Stream:
         self.on_disk, self.kept, self._rows = count, 0, {}
 
     def _fitting(self, name: str, value: npt.ArrayLike) -> npt.NDArray[Any]:
-        dataset = self._time if name == "time" else self._values[name]
+        dtype, shape = self._forms[name]
         array = np.asarray(value)
-        if array.ndim == dataset.ndim - 1:
+        if array.shape == shape:
             array = array[np.newaxis]
-        if array.ndim != dataset.ndim or array.shape[1:] != dataset.shape[1:]:
-            raise ValueError(f"{name}: shape {array.shape}, need (rows, *{dataset.shape[1:]})")
-        if not np.can_cast(array.dtype, dataset.dtype, "same_kind"):
-            raise ValueError(f"{name}: {array.dtype} does not fit into {dataset.dtype}")
+        if array.ndim != len(shape) + 1 or array.shape[1:] != shape:
+            raise ValueError(f"{name}: shape {array.shape}, need (rows, *{shape})")
+        if not np.can_cast(array.dtype, dtype, "same_kind"):
+            raise ValueError(f"{name}: {array.dtype} does not fit into {dtype}")
         # A copy: the caller may go on with its array while the row is kept.
-        return array.astype(dataset.dtype)
+        return array.astype(dtype)
+
+
+def _joined(blocks: list[npt.NDArray[Any]]) -> npt.NDArray[Any]:
+    return blocks[0] if len(blocks) == 1 else np.concatenate(blocks)
 
 
 def committed_rows(group: h5py.Group) -> int:

@@ -90,6 +90,8 @@ def _frames(file: h5py.File, plan: RunPlan) -> None:
         maxshape=(None, *plan.frame_shape),
         chunks=(rows, *plan.frame_shape),
         dtype=plan.frame_dtype,
+        # Else the first frame of a chunk would wait for zeros to be written for all of them.
+        fill_time="never",
     )
     _index(dataset)
     _label(dataset, column, plan)
