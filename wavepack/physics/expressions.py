@@ -140,6 +140,10 @@ _ALLOWED: Final = (
 )
 
 
+#: Names that a parameter cannot take.
+RESERVED: Final = frozenset({*_FUNCTIONS, *_CONSTANTS, "x", "y", "t", "and", "or", "not"})
+
+
 @dataclass(frozen=True)
 class Expression:
     """A checked expression; make one with `compile_expression`.
@@ -178,6 +182,14 @@ class Expression:
             or (isinstance(node, ast.Call) and _called(node) in _JUMPING)
             for node in ast.walk(self._tree)
         )
+
+    @property
+    def logical(self) -> bool:
+        """Whether it is a condition: a comparison, or conditions joined or denied."""
+        match self._tree:
+            case ast.Compare() | ast.BoolOp() | ast.UnaryOp(op=ast.Not()):
+                return True
+        return False
 
     def evaluate(self, **variables: RealArray | float) -> RealArray:
         """Return its value where the variables have the given values.

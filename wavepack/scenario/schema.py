@@ -231,6 +231,26 @@ class DetectorSpec:
         default=None,
     )
 
+    @classmethod
+    def read_x(cls, raw: object, units: UnitSystem) -> float | Span:
+        """Return a place, or limits; see `_place`."""
+        return _place(raw, units)
+
+    @classmethod
+    def read_y(cls, raw: object, units: UnitSystem) -> float | Span:
+        """Return a place, or limits; see `_place`."""
+        return _place(raw, units)
+
+    @classmethod
+    def write_x(cls, value: float | Span) -> float | Span:
+        """Return it as it is: a number or a span."""
+        return value
+
+    @classmethod
+    def write_y(cls, value: float | Span) -> float | Span:
+        """Return it as it is: a number or a span."""
+        return value
+
     @property
     def axis(self) -> str:
         """The axis that the plane crosses."""
@@ -248,6 +268,24 @@ class DetectorSpec:
     def spans(self) -> dict[str, Span]:
         """Limits along the other axis, if any."""
         return {k: s for k, s in (("x", self.x), ("y", self.y)) if isinstance(s, Span)}
+
+
+def _place(raw: object, units: UnitSystem) -> float | Span:
+    """Return where a plane stands, or the limits { from, to } of one across the other axis.
+
+    Raises
+    ------
+    ValueError
+        If it is neither.
+    """
+    if not isinstance(raw, dict):
+        return units.convert(raw, "length")
+    if set(raw) != {"from", "to"}:
+        raise ValueError(f"need a place, or limits {{ from, to }}, got {raw!r}")
+    lower, upper = (units.convert(raw[key], "length") for key in ("from", "to"))
+    if not lower < upper:
+        raise ValueError(f"need from < to, got {lower:g} and {upper:g}")
+    return Span(lower, upper)
 
 
 @dataclass(frozen=True)
@@ -272,8 +310,30 @@ class OutputSpec:
         default=None,
     )
     checkpoint_every: float = declare(
-        "custom", 'wall-clock time between checkpoints, such as "60 s"', default=60.0
+        "custom",
+        'wall-clock time between checkpoints, such as "60 s"; a bare number is in seconds',
+        default=60.0,
     )
+
+    @classmethod
+    def read_checkpoint_every(cls, raw: object, units: UnitSystem) -> float:
+        """Return seconds of wall-clock time.
+
+        Raises
+        ------
+        ValueError
+            If it is no time, or not positive.
+        """
+        del units
+        seconds = UnitSystem(time="s").convert(raw, "time")
+        if not seconds > 0:
+            raise ValueError(f"need a time > 0, got {raw!r}")
+        return seconds
+
+    @classmethod
+    def write_checkpoint_every(cls, value: float) -> str:
+        """Return the time as `read_checkpoint_every` reads it."""
+        return f"{value!r} s"
 
 
 @dataclass(frozen=True)

@@ -1,0 +1,94 @@
+"""``KEY=VALUE`` on the command line, applied to the parsed TOML before it is read."""
+
+import tomllib
+from collections.abc import Sequence
+from typing import Any
+
+from wavepack.errors import Fault
+from wavepack.scenario.lines import Path
+from wavepack.scenario.reader import nearest
+
+
+def apply_overrides(
+    raw: dict[str, Any], overrides: Sequence[str]
+) -> tuple[dict[Path, str], list[Fault]]:
+    """Change ``raw`` in place; return the paths set, with their text, and faults."""
+    applied: dict[Path, str] = {}
+    faults: list[Fault] = []
+    for text in overrides:
+        key, equals, value = text.partition("=")
+        key = key.strip()
+        if not equals or not key:
+            faults.append(Fault(key, "need KEY=VALUE", None, f"--set {text}"))
+            continue
+        try:
+            applied[_set(raw, key, _parse(value.strip()))] = text
+        except ValueError as error:
+            faults.append(Fault(key, str(error), None, f"--set {text}"))
+    return applied, faults
+
+
+def _parse(text: str) -> Any:  # noqa: ANN401 - any TOML value
+    """Return the value of a text: TOML if it is some, else the text itself."""
+    if "\n" in text:
+        return text
+    try:
+        return tomllib.loads(f"value = {text}")["value"]
+    except (tomllib.TOMLDecodeError, RecursionError):
+        return text
+
+
+def _set(raw: dict[str, Any], key: str, value: Any) -> Path:  # noqa: ANN401 - any TOML value
+    """Set a value at a dotted key and return its path.
+
+    Raises
+    ------
+    ValueError
+        If the key leads through something that is no table, or into a list
+        without saying which of several items.
+    """
+    node: Any = raw
+    path: Path = ()
+    parts = key.split(".")
+    for position, part in enumerate(parts):
+        if isinstance(node, list):
+            index, taken = _item(node, part, path)
+            path = (*path, index)
+            node = node[index]
+            if taken:
+                if position == len(parts) - 1:
+                    raise ValueError(f"need a key inside {'.'.join(map(str, path))}, got none")
+                continue
+        if not isinstance(node, dict):
+            raise ValueError(f"{'.'.join(map(str, path))} is no table, it has no {part}")
+        path = (*path, part)
+        if position == len(parts) - 1:
+            node[part] = value
+        else:
+            node = node.setdefault(part, {})
+    return path
+
+
+def _item(items: list[Any], part: str, path: Path) -> tuple[int, bool]:
+    """Return which item is meant, and whether the part named it."""
+    place = ".".join(map(str, path))
+    if part.isdecimal():
+        if int(part) >= len(items):
+            raise ValueError(f"{place} has {len(items)} item(s), numbered from 0; got {part}")
+        return int(part), True
+    names = [_name(item, i) for i, item in enumerate(items)]
+    if part in names:
+        return names.index(part), True
+    if len(items) == 1:
+        return 0, False
+    raise ValueError(
+        f"{place} has {len(items)} items: name one or give its number"
+        f"{nearest(part, [n for n in names if n])}"
+    )
+
+
+def _name(item: Any, number: int) -> str:  # noqa: ANN401 - any TOML value
+    if not isinstance(item, dict):
+        return ""
+    name = item.get("name")
+    return name if isinstance(name, str) else f"{item.get('shape', '')}{number}"
