@@ -332,7 +332,7 @@ class Setup:
         )
 
     def _sign(self, spec: DetectorSpec) -> float:
-                if spec.toward is not None:
+        if spec.toward is not None:
             return 1.0 if spec.toward.startswith("+") else -1.0
         axis = self.grid.index(spec.axis)
         return 1.0 if spec.at >= self.content.centre[axis] else -1.0
