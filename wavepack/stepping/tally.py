@@ -75,6 +75,8 @@ class Tally:
 
     def settle(self) -> None:
         """Add up what is still only copied."""
+        if not self._filled:
+            return
         for buffer, total in zip(self._buffers, self._twice, strict=True):
             parts = buffer[: self._filled].view(np.float64).reshape(self._filled, -1)
             squares = np.einsum("ij,ij->j", parts, parts)
