@@ -5,27 +5,47 @@ from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
 from types import FrameType
-from typing import Any
+from typing import TYPE_CHECKING, Any, Final
 
-from wavepack.archive.layout import RUN_FILE, SCENARIO_FILE
+from wavepack.archive.disk import machine_errors
+from wavepack.archive.layout import RESULTS_FILE, RUN_FILE, SCENARIO_FILE
+from wavepack.archive.lock import RunLock
+from wavepack.archive.reader import open_run
+from wavepack.archive.results import read_results
 from wavepack.errors import MachineError, UsageError
 from wavepack.running.session import News, Session, as_run
+from wavepack.scenario.load import load_scenario
 from wavepack.scenario.schema import Scenario
 from wavepack.scenario.write import to_toml
 
+if TYPE_CHECKING:
+    from wavepack.archive.reader import Run
+    from wavepack.reporting.report import Picture
+
+# Rendering needs matplotlib and a video library, 0.5 s to import: only what
+# draws imports it.
+
 Tell = Callable[[News], None]
+Note = Callable[[str], None]
+
+#: Runs go here, each into a folder named after its scenario's file.
+RUNS: Final = Path("runs")
+MOVIE_FILE: Final = "movie.mp4"
+FIGURES: Final = "figures"
 
 
 def run(
     scenario: Scenario,
-    out: Path | str,
+    out: Path | str | None = None,
     *,
     threads: int | None = None,
     fresh: bool = False,
     tell: Tell = lambda _: None,
+    note: Note = lambda _: None,
 ) -> dict[str, Any]:
     """Propagate a scenario into a run folder and return its results.
 
+    The folder is ``runs/`` and the stem of the scenario's file by default.
     SIGINT and SIGTERM end it at the next stop, with a checkpoint saved and the
     status ``interrupted``.
 
@@ -36,9 +56,9 @@ def run(
     ScenarioError, MachineError, NumericalFault
         See `wavepack.errors`.
     """
-    folder = Path(out)
-    if fresh:
-        move_aside(folder)
+    folder = default_folder(scenario) if out is None else Path(out)
+    if fresh and (former := move_aside(folder)) is not None:
+        note(f"{folder}: the former run is now in {former}")
     refuse_existing(folder, scenario)
     try:
         folder.mkdir(parents=True, exist_ok=True)
@@ -56,12 +76,13 @@ def resume(
     until: float | str | None = None,
     threads: int | None = None,
     tell: Tell = lambda _: None,
-    note: Callable[[str], None] = lambda _: None,
+    note: Note = lambda _: None,
 ) -> dict[str, Any]:
     """Go on from the newest checkpoint of a run folder and return the results.
 
     ``until`` is a time in the scenario's unit or with its own; it may lie
-    beyond the scenario's end.
+    beyond the scenario's end. Without it a run that has come to its end is left
+    as it is.
 
     Raises
     ------
@@ -70,19 +91,167 @@ def resume(
     ScenarioError, MachineError, NumericalFault
         See `wavepack.errors`.
     """
-    with asked_to_stop() as asked, Session.resume(
-        Path(folder), until=until, threads=threads
-    ) as session:
+    folder = Path(folder)
+    end = None if until is None else time_of(folder, until)
+    if end is None and (found := ended(folder)) is not None:
+        status = found["status"].replace("_", " ")
+        note(f"{folder}: this run is {status} already; --until takes it beyond its end")
+        return found
+    with asked_to_stop() as asked, Session.resume(folder, until=end, threads=threads) as session:
         for text in session.notes:
             note(text)
         return session.propagate(stop_asked=asked, tell=tell)
 
 
+def results(folder: Path | str) -> dict[str, Any]:
+    """Return what `results.json` of a run folder holds.
+
+    Raises
+    ------
+    UsageError
+        If the folder holds no results.
+    MachineError
+        If they cannot be read.
+    """
+    return read_results(Path(folder))
+
+
+def movie(
+    folder: Path | str,
+    out: Path | str | None = None,
+    *,
+    size: tuple[int, int] = (1280, 720),
+    fps: float = 25,
+    progress: Callable[[int, int], None] | None = None,
+) -> Path:
+    """Render the stored frames of a run, by default to ``movie.mp4`` in its folder.
+
+    Raises
+    ------
+    UsageError
+        If it is no run folder, or ending, size or rate cannot be met.
+    MachineError
+        If the file cannot be written.
+    """
+    from wavepack.rendering.movie import render_movie  # noqa: PLC0415 - see above
+
+    opened = open_run(folder)
+    path = opened.folder / MOVIE_FILE if out is None else Path(out)
+    return render_movie(opened, path, size=size, fps=fps, progress=progress)
+
+
+def require_movie_format(out: Path | str) -> None:
+    """Raise `UsageError` if a file's ending names no kind of movie."""
+    from wavepack.rendering.movie import format_of  # noqa: PLC0415 - see above
+
+    format_of(Path(out))
+
+
+def report(folder: Path | str) -> Path:
+    """Write ``report.html`` and the figures of a run into its folder.
+
+    Raises
+    ------
+    UsageError
+        If it is no run folder or has no results.
+    MachineError
+        If the files cannot be written.
+    """
+    from wavepack.reporting.report import write_report  # noqa: PLC0415 - see above
+
+    opened = open_run(folder)
+    found = opened.results
+    pictures, remarks = draw_figures(opened)
+    return write_report(opened.folder, found, opened.scenario_text, pictures, remarks)
+
+
+def draw_figures(opened: "Run") -> "tuple[list[Picture], list[str]]":
+    """Draw all figures of a run into ``figures/``; also return why some are missing."""
+    from wavepack.rendering.figures import draw_overview, draw_spectrum  # noqa: PLC0415 - see above
+    from wavepack.reporting.report import Picture  # noqa: PLC0415 - see above
+
+    folder = opened.folder / FIGURES
+    with machine_errors(folder, opened.folder):
+        folder.mkdir(exist_ok=True)
+    pictures, remarks = [], []
+    if len(opened):
+        drawn = draw_overview(opened, folder / "overview.png")
+        pictures.append(Picture(drawn, "Probability density and probabilities over time"))
+    else:
+        remarks.append("No frame has been stored yet, so there is no overview.")
+    for name in opened.detector_names:
+        if opened.has(f"detectors/{name}/energy"):
+            drawn = draw_spectrum(opened, name, folder / f"spectrum-{name}.png")
+            pictures.append(Picture(drawn, f"Transmission by energy at detector {name}"))
+    return pictures, remarks
+
+
+def misses(found: dict[str, Any], scenario: Scenario) -> list[str]:
+    """Return in what a run's stated errors miss the scenario's target, if it has one."""
+    if scenario.accuracy is None:
+        return []
+    target = scenario.accuracy.target
+    missed = []
+    for name in ("transmission", "reflection"):
+        error = found["quantities"][name]["error"]
+        if error is None:
+            missed.append(f"{name}: no numerical error is established, the target is {target:g}")
+        elif not error <= target:
+            missed.append(f"{name}: the numerical error {error:.2g} exceeds the target {target:g}")
+    return missed
+
+
+def default_folder(scenario: Scenario) -> Path:
+    """Return where a scenario's run goes if nothing else is said."""
+    return RUNS / Path(scenario.name).stem
+
+
+def scenario_of(folder: Path | str) -> Scenario:
+    """Return the scenario of a run folder.
+
+    Raises
+    ------
+    UsageError
+        If the folder holds no run.
+    ScenarioError
+        If the scenario in it has been spoilt.
+    """
+    path = Path(folder) / SCENARIO_FILE
+    if not path.is_file():
+        raise UsageError(f"{folder}: no {SCENARIO_FILE} in it; is it a run folder?")
+    return load_scenario(path)
+
+
+def time_of(folder: Path, text: float | str) -> float:
+    """Return a time, which may have its own unit, in the unit of a run folder's scenario."""
+    try:
+        return scenario_of(folder).units.convert(_number_or_text(text), "time")
+    except ValueError as error:
+        raise UsageError(f"--until: {error}") from error
+
+
+def _number_or_text(text: float | str) -> float | str:
+    try:
+        return float(text)
+    except ValueError:
+        return text
+
+
+def ended(folder: Path) -> dict[str, Any] | None:
+    """Return the results of a run that has come to its end, else None."""
+    if not (folder / RESULTS_FILE).is_file():
+        return None
+    found = read_results(folder)
+    return found if found.get("status") in {"finished", "stopped_early"} else None
+
+
 def refuse_existing(folder: Path, scenario: Scenario) -> None:
     """Raise `UsageError` if a folder holds a run, and say which and what to do."""
-    path = folder / SCENARIO_FILE
-    if not path.is_file() and not (folder / RUN_FILE).exists():
+    if folder.exists() and not folder.is_dir():
+        raise UsageError(f"{folder}: is a file; give the name of a folder with --out")
+    if not holds_run(folder):
         return
+    path = folder / SCENARIO_FILE
     same = path.is_file() and path.read_text(encoding="utf-8") == to_toml(as_run(scenario))
     if same:
         raise UsageError(
@@ -95,10 +264,25 @@ def refuse_existing(folder: Path, scenario: Scenario) -> None:
     )
 
 
+def holds_run(folder: Path) -> bool:
+    """Tell whether a folder holds a run."""
+    return (folder / SCENARIO_FILE).is_file() or (folder / RUN_FILE).exists()
+
+
 def move_aside(folder: Path) -> Path | None:
-    """Rename an existing folder to the first free name with a number, and return it."""
-    if not folder.exists():
+    """Rename a folder that holds a run to the first free name with a number, and return it.
+
+    Raises
+    ------
+    UsageError
+        If another process is at work in it.
+    MachineError
+        If it cannot be renamed.
+    """
+    if not holds_run(folder):
         return None
+    RunLock(folder).acquire().release()
+    folder = folder.absolute()
     number = 1
     while (target := folder.with_name(f"{folder.name}.before-{number}")).exists():
         number += 1

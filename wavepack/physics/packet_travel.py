@@ -67,7 +67,7 @@ def nearest_row(scene: Scene, center: Sequence[float], axis: int) -> RealArray:
     line = scene.grid.axes[axis]
     i = int(np.argmin(np.abs(line.coordinates - center[axis])))
     if axis == 0:
-        return total(scene.pieces, scene.grid, scene.particle, rows=slice(i, i + 1))[0]
+        return np.asarray(total(scene.pieces, scene.grid, scene.particle, rows=slice(i, i + 1))[0])
     return np.asarray(total(scene.pieces, scene.grid, scene.particle)[:, i])
 
 

@@ -27,7 +27,7 @@ def run_plan(setup: Setup, text: str) -> RunPlan:
     series += ["transmission", "reflection", "held", "lost", "autocorrelation"]
     energies = {d.name: d.spectrum.energies for d in setup.detectors(setup.clock) if d.spectrum}
     psi = setup.start[0]
-    momentum = {"kx": momentum_density(psi, setup.grid, 0)[0]} if setup.grid.ndim == 1 else {}
+    momentum = {"x": momentum_density(psi, setup.grid, 0)[0]} if setup.grid.ndim == 1 else {}
     return RunPlan(
         title=setup.scenario.title,
         scenario_text=text,

@@ -30,8 +30,9 @@ from wavepack.stepping.schedule import Schedule, frame_steps
 from wavepack.stepping.scheme import Clock, Scheme, Stepper
 from wavepack.stepping.split_operator import SplitOperator
 
-#: Detectors keep up with this many times the largest kinetic energy expected.
-BAND_MARGIN = 2.0
+#: Detectors keep up with this many times the largest kinetic energy expected, so
+#: that what is expected lies below the taper of their band.
+BAND_MARGIN = 4.0
 #: Series have between this many rows and twice as many, unless told otherwise.
 RECORDS = 1000
 #: Fields below this many points are not worth a second thread.
