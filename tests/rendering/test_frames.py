@@ -13,7 +13,8 @@ from wavepack.errors import UsageError
 from wavepack.rendering import style
 from wavepack.rendering.canvas import Canvas, Rect, polyline
 from wavepack.rendering.frames import KINDS, picture_of
-from wavepack.rendering.line_picture import LinePicture, intervals
+from wavepack.rendering.line_picture import LinePicture
+from wavepack.rendering.line_structure import intervals
 from wavepack.rendering.map_picture import MapPicture
 from wavepack.rendering.scene import Curves, Frames, Region, Scene, time_format
 

@@ -1,0 +1,290 @@
+"""A whole run on one page: where it was when, and how much of it where."""
+
+from typing import Any, Literal
+
+import numpy as np
+from matplotlib.axes import Axes
+from matplotlib.cm import ScalarMappable
+from matplotlib.collections import QuadMesh
+from matplotlib.colors import ListedColormap
+from matplotlib.figure import Figure
+from matplotlib.image import AxesImage
+from matplotlib.layout_engine import ConstrainedLayoutEngine
+
+from wavepack.arrays import ComplexArray, RealArray
+from wavepack.rendering import style
+from wavepack.rendering.canvas import round_ticks
+from wavepack.rendering.line_structure import intervals, with_arrow
+from wavepack.rendering.plane_structure import draw_structure
+from wavepack.rendering.scales import PowerScale, energy_window, number
+from wavepack.rendering.scene import (
+    Curves,
+    Frames,
+    Scene,
+    density_of,
+    time_format,
+)
+from wavepack.rendering.strip import draw_curves
+
+#: A space-time map holds no more points along x than a page can show.
+_WIDEST = 1600
+
+
+def line_overview(scene: Scene, frames: Frames, curves: Curves | None, scale: PowerScale) -> Figure:
+    """Return the density by place and time, the structure above and the curves beside it."""
+    figure = Figure(figsize=(9.6, 6.0), layout=page_layout())
+    columns = [1.0, 0.03] if curves is None else [1.0, 0.03, 0.36]
+    grid = figure.add_gridspec(2, len(columns), width_ratios=columns, height_ratios=[0.34, 1.0])
+    above, map_axes = figure.add_subplot(grid[0, 0]), figure.add_subplot(grid[1, 0])
+    _title(above, scene)
+    _draw_profile(above, scene)
+    image = _draw_space_time(map_axes, scene, frames, scale)
+    _colour_bar(figure, figure.add_subplot(grid[1, 1]), image, scale, scene)
+    if curves is not None:
+        beside = figure.add_subplot(grid[1, 2])
+        _draw_sideways(beside, curves, frames.times)
+        _legend(beside, figure.add_subplot(grid[0, 2]), "lower left")
+    return figure
+
+
+def page_layout() -> ConstrainedLayoutEngine:
+    """Return the spacing shared by all pages."""
+    return ConstrainedLayoutEngine(w_pad=0.07, h_pad=0.06, wspace=0.02, hspace=0.02)
+
+
+def _title(axes: Axes, scene: Scene) -> None:
+    axes.set_title(scene.title, loc="left", fontsize=12, parse_math=False)
+
+
+def _draw_profile(axes: Axes, scene: Scene) -> None:
+    """Draw the potential with energy, regions, detectors and layers along x."""
+    x, (low, high) = scene.coordinates[0], energy_window(scene.potential, scene.mean_energy)
+    # Room at the top for the bars of the regions and their names.
+    top = high + 0.42 * (high - low)
+    axes.set_xlim(*scene.extent(0))
+    axes.set_ylim(low, top)
+    axes.tick_params(labelbottom=False, labelsize=9)
+    axes.yaxis.set_major_locator(round_ticks(4))
+    for layer in scene.layers:
+        axes.axvspan(layer.start, layer.stop, color=style.ABSORBER, linewidth=0)
+    visible = np.clip(np.nan_to_num(scene.potential), low, high)
+    axes.fill_between(x, visible, low, color=style.POTENTIAL_FILL, linewidth=0)
+    axes.plot(x, visible, color=style.POTENTIAL, linewidth=1.1)
+    if scene.mean_energy is not None:
+        axes.axhline(scene.mean_energy, color=style.ENERGY, linewidth=0.9, linestyle=(0, (7, 4)))
+        axes.annotate(
+            "⟨E⟩",
+            (1, scene.mean_energy),
+            xycoords=("axes fraction", "data"),
+            xytext=(-4, 2),
+            textcoords="offset points",
+            ha="right",
+            va="bottom",
+            fontsize=8,
+            color=style.ENERGY,
+        )
+    for region in scene.regions:
+        colour = style.role_colour(region.role)
+        for start, stop in intervals(region, scene):
+            axes.axvspan(start, stop, 0.96, 1.0, color=colour, linewidth=0)
+            axes.annotate(
+                region.name,
+                ((start + stop) / 2, 0.94),
+                xycoords=("data", "axes fraction"),
+                ha="center",
+                va="top",
+                fontsize=8,
+                color=colour,
+                parse_math=False,
+            )
+    at_start = " at t = 0" if scene.driven else ""
+    axes.set_ylabel(
+        scene.units.label(f"V{at_start}", scene.units.energy), fontsize=10, color=style.POTENTIAL
+    )
+
+
+def _draw_space_time(axes: Axes, scene: Scene, frames: Frames, scale: PowerScale) -> QuadMesh:
+    x = scene.coordinates[0]
+    stride = max(1, len(x) // _WIDEST)
+    # One row a frame, thinned along x: small whatever the run's size.
+    rows = np.array(
+        [np.asarray(scale(density_of(frame)[::stride]), np.float32) for _, frame in frames]
+    )
+    image = axes.pcolormesh(
+        _edges(x[::stride]),
+        _edges(frames.times),
+        rows,
+        cmap=_colour_map(),
+        vmin=0,
+        vmax=1,
+        rasterized=True,
+    )
+    axes.set_xlim(*scene.extent(0))
+    axes.set_ylim(float(frames.times[0]), float(frames.times[-1]) or 1.0)
+    for layer in scene.layers:
+        for at in (layer.start, layer.stop):
+            axes.axvline(at, color=style.ABSORBER_EDGE, linewidth=0.8, linestyle=(0, (2, 3)))
+    for detector in scene.detectors:
+        axes.axvline(detector.at, color=style.INK, linewidth=0.9, linestyle=(0, (1, 2)))
+        axes.annotate(
+            with_arrow(detector.name, detector.toward),
+            (detector.at, 0.985),
+            xycoords=("data", "axes fraction"),
+            xytext=(3, 0),
+            textcoords="offset points",
+            va="top",
+            fontsize=8,
+            parse_math=False,
+            bbox=_halo(),
+        )
+    _outline_potential(axes, scene)
+    axes.tick_params(labelsize=9)
+    axes.xaxis.set_major_locator(round_ticks(8))
+    axes.set_xlabel(scene.units.label("x", scene.units.length), fontsize=10)
+    axes.set_ylabel(scene.units.label("t", scene.units.time), fontsize=10)
+    return image
+
+
+def _halo() -> dict[str, Any]:
+    return {"boxstyle": "square,pad=0.15", "facecolor": (1, 1, 1, 0.75), "edgecolor": "none"}
+
+
+def _outline_potential(axes: Axes, scene: Scene) -> None:
+    """Mark along all times where the potential passes the packet's mean energy."""
+    if scene.mean_energy is None:
+        return
+    x, above = scene.coordinates[0], scene.potential > scene.mean_energy
+    crossings = x[:-1][np.diff(above.astype(np.int8)) != 0]
+    if len(crossings) <= 12:
+        for at in crossings:
+            axes.axvline(at, color=style.POTENTIAL, linewidth=0.9)
+
+
+def _edges(points: RealArray) -> RealArray:
+    if len(points) < 2:
+        return np.array([points[0] - 0.5, points[0] + 0.5])
+    middles = (points[1:] + points[:-1]) / 2
+    return np.concatenate([[2 * points[0] - middles[0]], middles, [2 * points[-1] - middles[-1]]])
+
+
+def _colour_map() -> ListedColormap:
+    return ListedColormap(style.table_image(style.density_table()) / 255.0)
+
+
+def _colour_bar(
+    figure: Figure, axes: Axes, image: ScalarMappable, scale: PowerScale, scene: Scene
+) -> None:
+    ticks = scale.ticks(0.06)
+    bar = figure.colorbar(image, cax=axes, ticks=[float(scale(np.array([v]))[0]) for v in ticks])
+    bar.ax.set_yticklabels([number(value) for value in ticks], fontsize=8)
+    bar.outline.set_linewidth(0.6)
+    remark = f", {scale.remark} scale" if scale.remark else ""
+    bar.set_label(scene.units.label("|ψ|²", scene.units.density(scene.ndim)) + remark, fontsize=9)
+
+
+def _draw_sideways(axes: Axes, curves: Curves, times: RealArray) -> None:
+    """Draw probabilities along x against the time axis of the map."""
+    draw_curves(axes, curves, 1.6, upright=True)
+    axes.set_ylim(float(times[0]), float(times[-1]) or 1.0)
+    axes.set_xlim(-0.03, 1.03)
+    axes.set_xticks([0, 0.5, 1], ["0", "0.5", "1"])
+    axes.tick_params(labelleft=False, labelsize=9)
+    axes.grid(visible=True, color=style.GRID, linewidth=0.6)
+    axes.set_xlabel("probability", fontsize=10)
+
+
+def _legend(axes: Axes, empty: Axes, place: Literal["lower left", "center left"]) -> None:
+    """Name the curves in an empty panel, where they can hide nothing."""
+    empty.set_axis_off()
+    legend = empty.legend(
+        handles=axes.get_legend_handles_labels()[0],
+        loc=place,
+        fontsize=9,
+        frameon=False,
+        handlelength=2.4,
+        borderaxespad=0.0,
+    )
+    for text in legend.get_texts():
+        text.set_parse_math(False)
+
+
+def map_overview(scene: Scene, frames: Frames, curves: Curves | None, scale: PowerScale) -> Figure:
+    """Return the density at start, middle and end, with the curves in time below."""
+    spans = [stop - start for start, stop in (scene.extent(0), scene.extent(1))]
+    # Three maps side by side; the page is as tall as their proportions ask.
+    tall = min(max(3.15 * spans[1] / spans[0], 1.4), 7.0)
+    lower = 0.0 if curves is None else 2.1
+    figure = Figure(figsize=(11.0, tall + lower + 1.1), layout=page_layout())
+    grid = figure.add_gridspec(
+        1 if curves is None else 2,
+        3,
+        height_ratios=[1.0] if curves is None else [tall, lower - 0.4],
+    )
+    stamp = time_format(frames.times, scene.units.time)
+    for column, i in enumerate((0, (len(frames) - 1) // 2, len(frames) - 1)):
+        axes = figure.add_subplot(grid[0, column])
+        image = _draw_snapshot(axes, scene, frames.read(i), scale, first=column == 0)
+        when = stamp(float(frames.times[i])).replace("\u2007", "")
+        axes.set_title(when, loc="right", fontsize=10)
+        if column == 0:
+            axes.annotate(
+                scene.title,
+                (0, 1),
+                xycoords="axes fraction",
+                xytext=(0, 24),
+                textcoords="offset points",
+                fontsize=12,
+                parse_math=False,
+                annotation_clip=False,
+            )
+        if column == 2:
+            _colour_bar(figure, axes.inset_axes((1.04, 0, 0.045, 1)), image, scale, scene)
+    if curves is not None:
+        lower_grid = grid[1, :].subgridspec(1, 2, width_ratios=[1, 0.14])
+        along = figure.add_subplot(lower_grid[0])
+        _draw_along(along, scene, frames, curves)
+        _legend(along, figure.add_subplot(lower_grid[1]), "center left")
+    return figure
+
+
+def _draw_snapshot(
+    axes: Axes, scene: Scene, frame: RealArray | ComplexArray, scale: PowerScale, *, first: bool
+) -> AxesImage:
+    strides = [max(1, len(points) // 800) for points in scene.coordinates]
+    shares = scale(density_of(frame)[:: strides[0], :: strides[1]]).T
+    image = axes.imshow(
+        shares,
+        origin="lower",
+        extent=(*scene.extent(0), *scene.extent(1)),
+        cmap=_colour_map(),
+        vmin=0,
+        vmax=1,
+        interpolation="bilinear",
+        aspect="equal",
+    )
+    draw_structure(axes, scene, 10.0)
+    axes.set_xlim(*scene.extent(0))
+    axes.set_ylim(*scene.extent(1))
+    axes.tick_params(labelsize=9, labelleft=first)
+    axes.xaxis.set_major_locator(round_ticks(6))
+    axes.yaxis.set_major_locator(round_ticks(6))
+    axes.set_xlabel(scene.units.label("x", scene.units.length), fontsize=10)
+    if first:
+        axes.set_ylabel(scene.units.label("y", scene.units.length), fontsize=10)
+    return image
+
+
+def _draw_along(axes: Axes, scene: Scene, frames: Frames, curves: Curves) -> None:
+    """Draw probabilities against time, and the moments of the three maps."""
+    for i in {0, (len(frames) - 1) // 2, len(frames) - 1}:
+        axes.axvline(float(frames.times[i]), color=style.GRID, linewidth=1.4)
+    draw_curves(axes, curves, 1.6)
+    start, stop = float(frames.times[0]), float(frames.times[-1])
+    margin = 0.01 * (stop - start) or 0.5
+    axes.set_xlim(start - margin, stop + margin)
+    axes.set_ylim(-0.03, 1.03)
+    axes.tick_params(labelsize=9)
+    axes.xaxis.set_major_locator(round_ticks(10))
+    axes.grid(visible=True, axis="y", color=style.GRID, linewidth=0.6)
+    axes.set_xlabel(scene.units.label("t", scene.units.time), fontsize=10)
+    axes.set_ylabel("probability", fontsize=10)
