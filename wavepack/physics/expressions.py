@@ -7,8 +7,10 @@ comparisons and logic give 1 and 0.
 
 import ast
 import difflib
+import keyword
 import math
 import unicodedata
+import warnings
 from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass, field
 from functools import cached_property
@@ -141,7 +143,7 @@ _ALLOWED: Final = (
 
 
 #: Names that a parameter cannot take.
-RESERVED: Final = frozenset({*_FUNCTIONS, *_CONSTANTS, "x", "y", "t", "and", "or", "not"})
+RESERVED: Final = frozenset({*_FUNCTIONS, *_CONSTANTS, "x", "y", "t", *keyword.kwlist})
 
 
 @dataclass(frozen=True)
@@ -172,7 +174,7 @@ class Expression:
     @cached_property
     def _constants(self) -> dict[str, RealArray]:
         values = dict(_CONSTANTS) | dict(self.parameters)
-        return {name: np.float64(value) for name, value in values.items()}
+        return {name: np.asarray(value) for name, value in values.items()}
 
     @cached_property
     def sharp(self) -> bool:
@@ -263,7 +265,9 @@ def _parsed(text: str) -> ast.expr:
     if shift == len(line):
         raise ExpressionError("need an expression, got nothing", 1)
     try:
-        tree = ast.parse(line[shift:], mode="eval").body
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore")  # "1if x" only warns; it is refused below
+            tree = ast.parse(line[shift:], mode="eval").body
     except SyntaxError as error:
         column = shift + max(error.offset or 1, 1)
         raise ExpressionError(f"need an expression, {_complaint(line, column)}", column) from None
@@ -381,7 +385,8 @@ def _check_exponent(node: ast.expr) -> None:
 def _check_call(node: ast.Call) -> None:
     column = node.col_offset + 1
     if not isinstance(node.func, ast.Name):
-        raise ExpressionError(f"need the name of a function before (; allowed are {_ALLOWED}", column)
+        message = f"need the name of a function before (; allowed are {_ALLOWED}"
+        raise ExpressionError(message, column)
     name = node.func.id
     if name not in _FUNCTIONS:
         raise ExpressionError(f"no function {name}{_nearest(name, _FUNCTIONS)}", column)
@@ -419,8 +424,8 @@ def _nearest(name: str, known: tuple[str, ...] | Mapping[str, Any]) -> str:
     return f"; known: {', '.join(known)}"
 
 
-def _value(node: ast.expr, values: Mapping[str, RealArray]) -> Any:  # noqa: ANN401 - number, array
-    """Return the value of a checked node."""
+def _value(node: ast.expr, values: Mapping[str, RealArray]) -> Any:  # noqa: ANN401, PLR0911 - one case a node
+    """Return the value of a checked node, a number or an array."""
     match node:
         case ast.Constant():
             return np.float64(_number(node))

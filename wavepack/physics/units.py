@@ -1,8 +1,12 @@
-"""Units: what a quantity's text means, and the constants in the units of a run.
+r"""Units: what a quantity's text means, and the constants in the units of a run.
 
-The table is tabulated from CODATA 2022 [CODATA2022]_ rather than imported, so
-that reading a scenario needs no scientific library; a test compares it with
-`scipy.constants` and with a units library.
+Every unit is an exact fraction of the SI unit, so "80 meV" is 0.08 eV to the last
+bit. The constants are those that define the SI, and CODATA 2022 [CODATA2022]_,
+tabulated rather than imported: reading a scenario needs no scientific library, and
+a test compares them with one. Of the electron mass, the Bohr radius and the Hartree
+energy any one follows from the others, :math:`E_h = \hbar^2/m_e a_0^2`. Here the mass
+does, within its uncertainty, so that :math:`\hbar`, :math:`\hbar^2/m_e` and
+:math:`e^2/4\pi\epsilon_0` are exactly 1 in atomic units.
 """
 
 import difflib
@@ -10,64 +14,115 @@ import math
 import re
 from collections.abc import Mapping
 from dataclasses import dataclass
+from fractions import Fraction
 from functools import cached_property
 from types import MappingProxyType
 from typing import Final
 
 from wavepack.physics.particle import Particle
 
-# CODATA 2022, SI.
-HBAR: Final = 1.0545718176461565e-34
-PLANCK: Final = 6.62607015e-34
-CHARGE: Final = 1.602176634e-19
-ELECTRON_MASS: Final = 9.1093837139e-31
-PROTON_MASS: Final = 1.67262192595e-27
-ATOMIC_MASS: Final = 1.66053906892e-27
-BOHR: Final = 5.29177210544e-11
-HARTREE: Final = 4.3597447222060e-18
-LIGHT: Final = 299792458.0
-BOLTZMANN: Final = 1.380649e-23
-AVOGADRO: Final = 6.02214076e23
-ATOMIC_TIME: Final = 2.4188843265864e-17
-EPSILON_0: Final = 8.8541878188e-12
+_PLANCK: Final = Fraction("6.62607015e-34")  # J s
+_CHARGE: Final = Fraction("1.602176634e-19")  # C
+_LIGHT: Final = Fraction(299792458)  # m/s
+_BOLTZMANN: Final = Fraction("1.380649e-23")  # J/K
+_AVOGADRO: Final = Fraction("6.02214076e23")  # 1/mol
+_HBAR: Final = _PLANCK / (2 * Fraction("3.14159265358979323846264338327950288"))
+_BOHR: Final = Fraction("5.29177210544e-11")  # m
+_HARTREE: Final = Fraction("4.3597447222060e-18")  # J
+_ELECTRON_MASS: Final = _HBAR**2 / (_HARTREE * _BOHR**2)  # kg
+_PROTON_MASS: Final = Fraction("1.67262192595e-27")  # kg
+_ATOMIC_MASS: Final = Fraction("1.66053906892e-27")  # kg
+_COULOMB: Final = _HARTREE * _BOHR  # e^2/(4 pi eps0), J m
+
+
+def _ten(power: int) -> Fraction:
+    return Fraction(10) ** power
+
 
 _LENGTH = {
-    "m": 1.0, "mm": 1e-3, "um": 1e-6, "µm": 1e-6, "nm": 1e-9, "pm": 1e-12,
-    "angstrom": 1e-10, "Å": 1e-10, "A": 1e-10, "bohr": BOHR, "a0": BOHR,
+    "m": _ten(0),
+    "cm": _ten(-2),
+    "mm": _ten(-3),
+    "um": _ten(-6),
+    "µm": _ten(-6),
+    "nm": _ten(-9),
+    "pm": _ten(-12),
+    "angstrom": _ten(-10),
+    "Å": _ten(-10),
+    "A": _ten(-10),
+    "bohr": _BOHR,
+    "a0": _BOHR,
 }
 _ENERGY = {
-    "J": 1.0, "eV": CHARGE, "meV": 1e-3 * CHARGE, "ueV": 1e-6 * CHARGE, "µeV": 1e-6 * CHARGE,
-    "keV": 1e3 * CHARGE, "Hartree": HARTREE, "hartree": HARTREE, "Eh": HARTREE,
-    "mHartree": 1e-3 * HARTREE, "Ry": HARTREE / 2, "K": BOLTZMANN, "cm^-1": PLANCK * LIGHT * 100,
-    "1/cm": PLANCK * LIGHT * 100, "THz": PLANCK * 1e12, "GHz": PLANCK * 1e9,
-    "kJ/mol": 1e3 / AVOGADRO, "kcal/mol": 4184.0 / AVOGADRO,
+    "J": _ten(0),
+    "eV": _CHARGE,
+    "meV": _CHARGE * _ten(-3),
+    "ueV": _CHARGE * _ten(-6),
+    "µeV": _CHARGE * _ten(-6),
+    "keV": _CHARGE * _ten(3),
+    "Hartree": _HARTREE,
+    "hartree": _HARTREE,
+    "Ha": _HARTREE,
+    "Eh": _HARTREE,
+    "mHartree": _HARTREE * _ten(-3),
+    "mHa": _HARTREE * _ten(-3),
+    "Ry": _HARTREE / 2,
+    "K": _BOLTZMANN,
+    "cm^-1": _PLANCK * _LIGHT * _ten(2),
+    "1/cm": _PLANCK * _LIGHT * _ten(2),
+    "THz": _PLANCK * _ten(12),
+    "GHz": _PLANCK * _ten(9),
+    "kJ/mol": _ten(3) / _AVOGADRO,
+    "kcal/mol": Fraction(4184) / _AVOGADRO,
 }
 _TIME = {
-    "s": 1.0, "ms": 1e-3, "us": 1e-6, "µs": 1e-6, "ns": 1e-9, "ps": 1e-12, "fs": 1e-15,
-    "as": 1e-18, "atomic_time": ATOMIC_TIME, "hbar/Eh": ATOMIC_TIME, "min": 60.0, "h": 3600.0,
+    "s": _ten(0),
+    "ms": _ten(-3),
+    "us": _ten(-6),
+    "µs": _ten(-6),
+    "ns": _ten(-9),
+    "ps": _ten(-12),
+    "fs": _ten(-15),
+    "as": _ten(-18),
+    "atomic_time": _HBAR / _HARTREE,
+    "hbar/Eh": _HBAR / _HARTREE,
+    "hbar/Ha": _HBAR / _HARTREE,
+    "min": Fraction(60),
+    "h": Fraction(3600),
 }
 _MASS = {
-    "kg": 1.0, "g": 1e-3, "m_e": ELECTRON_MASS, "me": ELECTRON_MASS, "m_p": PROTON_MASS,
-    "u": ATOMIC_MASS, "Da": ATOMIC_MASS,
+    "kg": _ten(0),
+    "g": _ten(-3),
+    "m_e": _ELECTRON_MASS,
+    "me": _ELECTRON_MASS,
+    "m_p": _PROTON_MASS,
+    "u": _ATOMIC_MASS,
+    "Da": _ATOMIC_MASS,
 }
+_VOLTAGE = {"V": _ten(0), "mV": _ten(-3), "kV": _ten(3), "MV": _ten(6), "GV": _ten(9)}
 _FIELD = {
-    "V/m": 1.0, "kV/m": 1e3, "MV/m": 1e6, "V/cm": 1e2, "kV/cm": 1e5, "MV/cm": 1e8,
-    "V/um": 1e6, "V/µm": 1e6, "V/nm": 1e9, "mV/nm": 1e6, "V/angstrom": 1e10, "V/Å": 1e10,
-    "Eh/(e bohr)": HARTREE / CHARGE / BOHR,
+    f"{volts}/{length}": _VOLTAGE[volts] / _LENGTH[length]
+    for volts in _VOLTAGE
+    for length in _LENGTH
+} | {
+    f"{energy}/(e {length})": _ENERGY[energy] / _CHARGE / _LENGTH[length]
+    for energy in _ENERGY
+    for length in _LENGTH
 }
-_ANGLE = {"rad": 1.0, "deg": math.pi / 180, "°": math.pi / 180}
+# A degree is no fraction of a radian: to the last bit of a double.
+_ANGLE = {"rad": _ten(0), "deg": Fraction(math.pi / 180), "°": Fraction(math.pi / 180)}
 
 
-def _inverse(table: Mapping[str, float]) -> dict[str, float]:
-    found: dict[str, float] = {}
-    for symbol, factor in table.items():
-        for text in (f"1/{symbol}", f"{symbol}^-1", f"/{symbol}"):
-            found[text] = 1 / factor
-    return found
+def _inverse(table: Mapping[str, Fraction]) -> dict[str, Fraction]:
+    return {
+        text: 1 / factor
+        for symbol, factor in table.items()
+        for text in (f"1/{symbol}", f"{symbol}^-1", f"/{symbol}")
+    }
 
 
 #: SI factor of every unit, by dimension.
-TABLE: Final[Mapping[str, Mapping[str, float]]] = MappingProxyType(
+TABLE: Final[Mapping[str, Mapping[str, Fraction]]] = MappingProxyType(
     {
         "length": _LENGTH,
         "energy": _ENERGY,
@@ -76,16 +131,22 @@ TABLE: Final[Mapping[str, Mapping[str, float]]] = MappingProxyType(
         "wavenumber": _inverse(_LENGTH),
         "field": _FIELD,
         "angle": _ANGLE,
-        "": {"": 1.0, "1": 1.0, "%": 0.01},
+        "": {"": _ten(0), "1": _ten(0), "%": _ten(-2)},
     }
 )
 
 #: The four units of a system of Hartree atomic units.
 ATOMIC: Final = {"length": "bohr", "energy": "Hartree", "time": "atomic_time", "mass": "m_e"}
 
+#: Exponents have four digits at most: a longer one would take hours to expand.
 _QUANTITY = re.compile(
-    r"\s*([+-]?(?:\d[\d_]*\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)\s*(.*?)\s*", re.ASCII | re.DOTALL
+    r"\s*([+-]?(?:\d+(?:_\d+)*\.?\d*|\.\d+)(?:[eE][+-]?\d{1,4})?)(?![\d.])\s*(.*?)\s*",
+    re.ASCII | re.DOTALL,
 )
+#: Signs that look alike or stand for the same: micro, superscripts.
+_LIKE: Final = str.maketrans({"μ": "µ", "⁻": "^-", "¹": "1", "·": " "})
+#: Units named in a message where none is near.
+MOST_NAMED: Final = 12
 
 
 @dataclass(frozen=True)
@@ -112,8 +173,8 @@ class UnitSystem:
         """Return Hartree atomic units."""
         return cls(**ATOMIC)
 
-    def scale(self, dimension: str) -> float:
-        """Return what one of this system's units is in SI.
+    def scale(self, dimension: str) -> Fraction:
+        """Return what one of this system's units is in SI, exactly.
 
         Raises
         ------
@@ -126,9 +187,9 @@ class UnitSystem:
             case "wavenumber" | "stiffness":
                 return 1 / self.scale("length")
             case "field":
-                return self.scale("energy") / (CHARGE * self.scale("length"))
+                return self.scale("energy") / (_CHARGE * self.scale("length"))
             case "angle" | "":
-                return 1.0
+                return Fraction(1)
         raise KeyError(dimension)
 
     def symbol(self, dimension: str) -> str:
@@ -169,10 +230,7 @@ class UnitSystem:
         elif dimension == "angle":
             raise ValueError(f'need an angle with its unit, such as "30 deg", got {value!r}')
         else:
-            try:
-                number = float(value)
-            except OverflowError:
-                number = math.inf
+            number = _float(value)
         if not math.isfinite(number):
             raise ValueError(f"need a finite number, got {_shown(value)}")
         return number
@@ -187,30 +245,31 @@ class UnitSystem:
         """
         if not isinstance(value, str):
             return self.convert(value, "")
-        number, unit = _split(value, "a number, with a unit if it is no pure number")
+        unit = _split(value, "a number, with a unit if it is no pure number")[1]
         dimensions = [name for name, table in TABLE.items() if unit in table]
         if not dimensions:
             every = [symbol for table in TABLE.values() for symbol in table]
             raise ValueError(f"unknown unit {unit!r}{_nearest(unit, every)}")
-        return self.convert(f"{number!r} {unit}", dimensions[0])
+        if len(dimensions) > 1:
+            both = " and ".join(dimensions)
+            raise ValueError(f"need a unit of one dimension, got {unit!r}, which is {both}")
+        return self.convert(value, dimensions[0])
 
     @cached_property
     def hbar(self) -> float:
         """The constant [energy time]."""
-        return HBAR / (self.scale("energy") * self.scale("time"))
+        return float(_HBAR / (self.scale("energy") * self.scale("time")))
 
     @cached_property
     def hbar2_per_mass(self) -> float:
         """hbar^2 over the unit of mass [energy length**2]."""
-        if self == UnitSystem.atomic():
-            return 1.0
-        return HBAR**2 / (self.scale("mass") * self.scale("energy") * self.scale("length") ** 2)
+        scale = self.scale("mass") * self.scale("energy") * self.scale("length") ** 2
+        return float(_HBAR**2 / scale)
 
     @cached_property
     def coulomb(self) -> float:
         """e^2/(4 pi epsilon_0) [energy length]."""
-        value = CHARGE**2 / (4 * math.pi * EPSILON_0)
-        return value / (self.scale("energy") * self.scale("length"))
+        return float(_COULOMB / (self.scale("energy") * self.scale("length")))
 
     def particle(self, mass: float, charge: float) -> Particle:
         """Return a particle of a mass [mass] and charge [e] with the constants it needs."""
@@ -219,42 +278,46 @@ class UnitSystem:
     def _convert_text(self, text: str, dimension: str) -> float:
         number, unit = _split(text, _wanted(dimension))
         if not unit and dimension != "angle":
-            return number
-        scale = self.scale(dimension)
-        table = TABLE.get("wavenumber" if dimension == "stiffness" else dimension, {})
-        own = self.symbol(dimension)
-        if unit == own and unit not in table:
-            return number
+            return _float(number)
+        table = TABLE["wavenumber" if dimension == "stiffness" else dimension]
         if unit not in table:
-            known = sorted(table)
             raise ValueError(
                 f"need {_wanted(dimension)}, got {_shown(text)}: "
-                f"unknown unit {unit!r}{_nearest(unit, known)}"
+                f"unknown unit {_shown(unit)}{_nearest(unit, list(table))}"
             )
-        if unit == own:
-            return number
-        return number * table[unit] / scale
+        return _float(number * table[unit] / self.scale(dimension))
 
 
-def _split(text: str, wanted: str) -> tuple[float, str]:
+def _split(text: str, wanted: str) -> tuple[Fraction, str]:
+    """Return number and unit, one space at most within it and none around / and ^."""
     match = _QUANTITY.fullmatch(text)
     if match is None:
         raise ValueError(f"need {wanted}, got {_shown(text)}")
-    return float(match[1]), " ".join(match[2].split())
+    unit = " ".join(match[2].translate(_LIKE).split())
+    return Fraction(match[1]), re.sub(r" ?([/^]) ?", r"\1", unit)
 
 
-def _factor(unit: str, dimension: str) -> float:
+def _float(value: float | Fraction) -> float:
+    try:
+        return float(value)
+    except OverflowError:
+        return math.inf
+
+
+def _factor(unit: str, dimension: str) -> Fraction:
     table = TABLE[dimension]
     if unit not in table:
-        raise ValueError(
-            f"need a unit of {dimension}, got {unit!r}{_nearest(unit, sorted(table))}"
-        )
+        raise ValueError(f"need a unit of {dimension}, got {unit!r}{_nearest(unit, sorted(table))}")
     return table[unit]
 
 
 def _nearest(unit: str, known: list[str]) -> str:
-    close = difflib.get_close_matches(unit, known, n=1, cutoff=0.5)
-    return f"; did you mean {close[0]!r}?" if close else f"; known: {', '.join(known)}"
+    # Case first: "ev" and "MEV" mean eV and meV, whatever else is near.
+    folded = {name.lower(): name for name in reversed(known)}
+    close = difflib.get_close_matches(unit.lower(), folded, n=1, cutoff=0.5)
+    if close:
+        return f"; did you mean {folded[close[0]]!r}?"
+    return f"; known: {', '.join(known[:MOST_NAMED])}"
 
 
 def _wanted(dimension: str) -> str:
