@@ -11,7 +11,7 @@ from wavepack.archive.disk import machine_errors
 from wavepack.archive.layout import RESULTS_FILE, RUN_FILE, SCENARIO_FILE
 from wavepack.archive.lock import RunLock
 from wavepack.archive.reader import open_run
-from wavepack.archive.results import read_results
+from wavepack.archive.results import jsonable, read_results
 from wavepack.errors import MachineError, UsageError
 from wavepack.running.session import News, Session, as_run
 from wavepack.scenario.load import load_scenario
@@ -67,7 +67,7 @@ def run(
             f"{folder}: cannot be made: {error.strerror}; give another folder with --out"
         ) from error
     with asked_to_stop() as asked, Session.start(scenario, folder, threads=threads) as session:
-        return session.propagate(stop_asked=asked, tell=tell)
+        return plain(session.propagate(stop_asked=asked, tell=tell))
 
 
 def resume(
@@ -100,7 +100,7 @@ def resume(
     with asked_to_stop() as asked, Session.resume(folder, until=end, threads=threads) as session:
         for text in session.notes:
             note(text)
-        return session.propagate(stop_asked=asked, tell=tell)
+        return plain(session.propagate(stop_asked=asked, tell=tell))
 
 
 def results(folder: Path | str) -> dict[str, Any]:
@@ -245,6 +245,11 @@ def ended(folder: Path) -> dict[str, Any] | None:
     return found if found.get("status") in {"finished", "stopped_early"} else None
 
 
+def plain(found: dict[str, Any]) -> dict[str, Any]:
+    """Return results as `results.json` holds them, so that both ways to them give the same."""
+    return {name: jsonable(value) for name, value in found.items()}
+
+
 def refuse_existing(folder: Path, scenario: Scenario) -> None:
     """Raise `UsageError` if a folder holds a run, and say which and what to do."""
     if folder.exists() and not folder.is_dir():
@@ -282,7 +287,7 @@ def move_aside(folder: Path) -> Path | None:
     if not holds_run(folder):
         return None
     RunLock(folder).acquire().release()
-    folder = folder.absolute()
+    folder = folder if folder.name not in {"", ".."} else folder.resolve()
     number = 1
     while (target := folder.with_name(f"{folder.name}.before-{number}")).exists():
         number += 1

@@ -1,1 +1,1 @@
-
+"""Results as tables and pages; computes nothing."""
