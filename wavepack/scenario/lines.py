@@ -1,26 +1,37 @@
-"""Which line of a TOML text a key stands on; the parser itself does not say."""
+"""Which line of a TOML text a key stands on; the parser itself does not say.
+
+A scanner over a text that the parser has accepted: headers, dotted keys, inline
+tables, lists item by item, and the four kinds of text, all over several lines.
+"""
 
 import re
 import tomllib
-from collections.abc import Iterator
 from typing import TypeAlias
 
 Path: TypeAlias = tuple[str | int, ...]
 
-_HEADER = re.compile(r"\s*(\[\[?)\s*([^\[\]]+?)\s*\]\]?\s*(?:#.*)?")
-_KEY = re.compile(r"""\s*((?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*')(?:\s*\.\s*(?:[A-Za-z0-9_-]+|"[^"]*"|'[^']*'))*)\s*=""")
-_PART = re.compile(r"""[A-Za-z0-9_-]+|"[^"]*"|'[^']*'""")
+_BLANK = re.compile(r"(?:[ \t\r\n]+|#[^\n]*)*")
+_SPACE = re.compile(r"[ \t]*")
+_BARE_KEY = re.compile(r"[A-Za-z0-9_-]+")
+_QUOTED = re.compile(
+    r'"""(?:[^\\]|\\.)*?"{3,5}(?!")' r"|'''.*?'{3,5}(?!')" r'|"(?:[^"\\\n]|\\.)*"' r"|'[^'\n]*'",
+    re.DOTALL,
+)
+#: Numbers, truth values and dates; a date and its time may be a space apart.
+_PLAIN = re.compile(r"[^\s,\]}#]+(?: \d\d:[^\s,\]}#]+)?")
 
 
 class LineMap:
-    """Lines of the keys of a text, from 1.
-
-    A key inside a value, such as one of an inline table, is found with the
-    statement it belongs to.
-    """
+    """Lines, from 1, of the keys and list items of a text that parses."""
 
     def __init__(self, text: str) -> None:
-        self._lines = dict(_statements(text))
+        self._text = text
+        self._place = 0
+        self._line = 1
+        self._counted = 0
+        self._lists: dict[Path, int] = {}
+        self._lines: dict[Path, int] = {}
+        self._document()
 
     def find(self, path: Path) -> int | None:
         """Return the line of a key, or of the nearest table around it."""
@@ -29,59 +40,112 @@ class LineMap:
                 return self._lines[path[:length]]
         return None
 
+    def _document(self) -> None:
+        table: Path = ()
+        self._take(_BLANK)
+        while self._place < len(self._text):
+            if self._next("["):
+                table = self._header()
+            else:
+                self._assignment(table)
+            self._take(_BLANK)
 
-def syntax_line(error: tomllib.TOMLDecodeError) -> int | None:
+    def _header(self) -> Path:
+        """Read [a.b] or [[a.b]] and return its path, numbered where it is a list's."""
+        self._note(())
+        opens = self._text.startswith("[[", self._place)
+        self._place += 1 + opens
+        path: Path = ()
+        parts = self._key()
+        self._place += 1 + opens
+        for i, part in enumerate(parts, start=1):
+            path = (*path, part)
+            if opens and i == len(parts):
+                self._lists[path] = self._lists.get(path, -1) + 1
+                self._lines.setdefault(path, self._line)
+            if path in self._lists:
+                path = (*path, self._lists[path])
+            self._lines.setdefault(path, self._line)
+        return path
+
+    def _assignment(self, table: Path) -> None:
+        """Read key = value inside a table."""
+        self._note(table)
+        path = table
+        for part in self._key():
+            path = (*path, part)
+            self._note(path)
+        self._place += 1  # =
+        self._value(path)
+
+    def _key(self) -> list[str]:
+        """Read a dotted key."""
+        parts = []
+        while True:
+            self._take(_SPACE)
+            quoted = self._text[self._place] in "\"'"
+            part = self._take(_QUOTED if quoted else _BARE_KEY)
+            # The parser knows the escapes of quoted keys.
+            parts.append(next(iter(tomllib.loads(f"{part} = 0"))))
+            self._take(_SPACE)
+            if not self._next("."):
+                return parts
+            self._place += 1
+
+    def _value(self, path: Path) -> None:
+        """Read a value and note every key and item inside it."""
+        self._take(_SPACE)
+        if self._next("["):
+            self._list(path)
+        elif self._next("{"):
+            self._inline(path)
+        else:
+            self._take(_QUOTED if self._text[self._place] in "\"'" else _PLAIN)
+
+    def _list(self, path: Path) -> None:
+        self._place += 1
+        self._take(_BLANK)
+        number = 0
+        while not self._next("]"):
+            self._note((*path, number))
+            self._value((*path, number))
+            self._separator()
+            number += 1
+        self._place += 1
+
+    def _inline(self, path: Path) -> None:
+        self._place += 1
+        self._take(_BLANK)
+        while not self._next("}"):
+            self._assignment(path)
+            self._separator()
+        self._place += 1
+
+    def _separator(self) -> None:
+        self._take(_BLANK)
+        if self._next(","):
+            self._place += 1
+        self._take(_BLANK)
+
+    def _take(self, pattern: re.Pattern[str]) -> str:
+        match = pattern.match(self._text, self._place)
+        if match is None:
+            raise ValueError(f"line {self._line}: not TOML as the parser reads it")
+        self._place = match.end()
+        return match[0]
+
+    def _next(self, character: str) -> bool:
+        return self._text.startswith(character, self._place)
+
+    def _note(self, path: Path) -> None:
+        """Note the line of this place as that of a path, unless it has one."""
+        self._line += self._text.count("\n", self._counted, self._place)
+        self._counted = self._place
+        if path:
+            self._lines.setdefault(path, self._line)
+
+
+def syntax_line(error: ValueError) -> int | None:
     """Return the line that a syntax error names in its message."""
     match = re.search(r"at line (\d+)", str(error))
     return int(match[1]) if match else None
-
-
-def _statements(text: str) -> Iterator[tuple[Path, int]]:
-    """Yield (path, line) of every header and every key of a text that parses."""
-    lines = text.splitlines()
-    table: Path = ()
-    counts: dict[Path, int] = {}
-    number = 0
-    while number < len(lines):
-        line = lines[number]
-        header = _HEADER.fullmatch(line)
-        key = _KEY.match(line)
-        taken = 1
-        if header:
-            table = _resolve(_parts(header[2]), counts, opens=header[1] == "[[")
-            yield table, number + 1
-        elif key:
-            taken = _extent(lines, number)
-            path = table
-            for part in _parts(key[1]):
-                path = (*path, part)
-                yield path, number + 1
-        number += taken
-
-
-def _parts(text: str) -> list[str]:
-    return [part.strip("\"'") for part in _PART.findall(text)]
-
-
-def _resolve(parts: list[str], counts: dict[Path, int], *, opens: bool) -> Path:
-    """Return the path of a header; the last table of a list is meant by its name."""
-    path: Path = ()
-    for i, part in enumerate(parts):
-        path = (*path, part)
-        last = i == len(parts) - 1
-        if last and opens:
-            counts[path] = counts.get(path, -1) + 1
-        if path in counts:
-            path = (*path, counts[path])
-    return path
-
-
-def _extent(lines: list[str], first: int) -> int:
-    """Return how many lines the statement takes that begins at a line."""
-    for taken in range(1, len(lines) - first + 1):
-        try:
-            tomllib.loads("\n".join(lines[first : first + taken]))
-        except tomllib.TOMLDecodeError:
-            continue
-        return taken
-    return 1
