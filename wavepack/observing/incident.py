@@ -19,7 +19,8 @@ from wavepack.physics.kinetic import StaggeredKinetic
 
 #: The packet's support leaves out this much probability.
 OUTSIDE = 1e-6
-#: The potential counts as uniform if it varies by less than this share of the kinetic energy.
+#: The potential counts as uniform if, on average over the packet, it differs from
+#: that at its centre by less than this share of the kinetic energy.
 UNIFORM = 1e-4
 #: Transverse states with less weight are left out.
 LEAST_WEIGHT = 1e-13
@@ -79,8 +80,9 @@ class Launch:
         self._across = static[self._centre]
         kinetic = max(hamiltonian.kinetic.apply(psi).ravel().conj() @ psi.ravel(), 0).real
         kinetic *= grid.cell / grid.norm(psi)
-        box = static[support, across] - self._across[across]
-        self.reason = self._reason(float(np.abs(box).max()), kinetic)
+        density = np.abs(lines[support, across]) ** 2
+        change = np.abs(static[support, across] - self._across[across])
+        self.reason = self._reason(float(np.sum(density * change) / density.sum()), kinetic)
         self.levels, self._amplitudes = self._transverse(
             lines[self._wide], across, UNIFORM * kinetic
         )
@@ -106,8 +108,8 @@ class Launch:
         if variation > UNIFORM * kinetic:
             name = self._hamiltonian.grid.names[self._axis]
             return (
-                f"the potential is not uniform along {name} where the packet starts: it varies by "
-                f"{variation:.2g}, {variation / kinetic:.1%} of the mean kinetic energy"
+                f"the potential is not uniform along {name} where the packet starts: on average it "
+                f"differs from that at the centre by {variation / kinetic:.2%} of the kinetic energy"
             )
         return None
 

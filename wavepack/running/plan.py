@@ -71,6 +71,7 @@ def facts(setup: Setup) -> dict[str, Any]:
             for layer in setup.bare_layers
         ],
         "mean_energy": setup.choices.reference,
+        "parameters": dict(setup.scenario.parameters),
         "driven": bool(setup.landscape.driven),
         "axes": {
             axis.name: {"from": axis.start, "to": axis.stop, "ends": list(axis.ends)}
