@@ -40,6 +40,9 @@ class LineMap:
                 return self._lines[path[:length]]
         return None
 
+    def __contains__(self, path: Path) -> bool:
+        return path in self._lines
+
     def _document(self) -> None:
         table: Path = ()
         self._take(_BLANK)

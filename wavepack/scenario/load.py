@@ -14,7 +14,7 @@ from wavepack.physics.units import ATOMIC, UnitSystem
 from wavepack.scenario.lines import LineMap, Path, syntax_line
 from wavepack.scenario.overrides import apply_overrides
 from wavepack.scenario.reader import UNREADABLE, Reader, nearest, shown
-from wavepack.scenario.rules import check_rules
+from wavepack.scenario.rules import Draft, check_rules
 from wavepack.scenario.schema import (
     AbsorberSpec,
     AccuracySpec,
@@ -30,17 +30,28 @@ from wavepack.scenario.schema import (
 
 LARGEST_FILE: Final = 4_000_000
 TABLES: Final = (
-    "title", "units", "parameters", "particle", "grid", "potential", "packet", "absorber",
-    "propagator", "time", "region", "detector", "output", "accuracy",
+    "title",
+    "units",
+    "parameters",
+    "particle",
+    "grid",
+    "potential",
+    "packet",
+    "absorber",
+    "propagator",
+    "time",
+    "region",
+    "detector",
+    "output",
+    "accuracy",
 )
-#: Single tables: key, class, and whether it may be left out.
-SINGLE: Final = (
-    ("absorber", AbsorberSpec, True),
-    ("propagator", PropagatorSpec, False),
-    ("time", TimeSpec, False),
-    ("output", OutputSpec, False),
-    ("accuracy", AccuracySpec, True),
-)
+#: What rules see in the place of a table that could not be read.
+_STAND_INS: Final[Mapping[str, Any]] = {
+    "absorber": None,
+    "propagator": PropagatorSpec(),
+    "time": TimeSpec(),
+    "output": OutputSpec(),
+}
 
 
 def load_scenario(path: FilePath | str, overrides: Sequence[str] = ()) -> Scenario:
@@ -80,68 +91,86 @@ def parse_scenario(
     """
     try:
         raw = tomllib.loads(text)
-    except tomllib.TOMLDecodeError as error:
-        raise ScenarioError([Fault("", f"not TOML: {error}", syntax_line(error), file)]) from None
+        lines = LineMap(text)
     except RecursionError:
         raise ScenarioError([Fault("", "not TOML: nested too deeply", None, file)]) from None
+    except ValueError as error:
+        raise ScenarioError([Fault("", f"not TOML: {error}", syntax_line(error), file)]) from None
     overridden, faults = apply_overrides(raw, overrides)
-    reader = Reader(
-        file, LineMap(text), overridden, (folder or FilePath()).resolve(), UnitSystem()
-    )
+    reader = Reader(file, lines, overridden, (folder or FilePath()).resolve(), UnitSystem())
     reader.faults += faults
     scenario = _read(raw, reader)
-    if scenario is not None and not reader.faults:
-        check_rules(scenario, reader)
-    if scenario is None or reader.faults:
+    if scenario is None:
         unique = list(dict.fromkeys(reader.faults))
         raise ScenarioError(sorted(unique, key=lambda fault: fault.line or 0))
     return scenario
 
 
 def _read(raw: dict[str, Any], reader: Reader) -> Scenario | None:
+    """Return the scenario, or None with every fault noted."""
     reader.known_keys(raw, TABLES, ())
-    title = raw.get("title", "")
-    if not isinstance(title, str):
-        reader.fault(("title",), f"need a text, got {shown(title)}")
-        title = ""
+    title = _title(raw.get("title", ""), reader)
     reader.units = _units(raw.get("units", {}), reader)
     reader.parameters = _parameters(raw.get("parameters", {}), reader)
-    grid = _grid(raw, reader)
-    reader.axes = tuple(grid) if grid else ("x",)
     particle = _required_table(raw, "particle", ParticleSpec, reader)
-    single = {
-        key: None if optional and key not in raw else reader.read(cls, raw.get(key, {}), (key,))
-        for key, cls, optional in SINGLE
-    }
-    potential = _shaped(raw, "potential", SHAPES, reader)
-    packet = _shaped(raw, "packet", PACKETS, reader)
-    region = _list(raw, "region", RegionSpec, reader)
-    detector = _list(raw, "detector", DetectorSpec, reader)
-    if not raw.get("packet"):
-        reader.fault(("packet",), "missing; need at least one [[packet]], the initial state")
-    parts = [particle, *single.values(), potential, packet, region, detector]
-    if grid is None or any(part is UNREADABLE for part in parts):
+    draft = _draft(raw, reader)
+    check_rules(draft, reader)
+    if reader.faults:
         return None
     return Scenario(
         title=title,
         units=reader.units,
         particle=reader.units.particle(particle.mass, particle.charge),
         parameters=reader.parameters,
-        grid=grid,
-        potential=tuple(_bound(piece, reader.units) for piece in potential),
-        packet=packet,
-        absorber=_spread(single["absorber"], tuple(grid)),
-        propagator=single["propagator"],
-        time=single["time"],
-        region=tuple(
-            replace(spec, role="none") if spec.role == "held" else spec for spec in region
-        ),
-        detector=detector,
-        output=single["output"],
-        accuracy=single["accuracy"],
+        grid=draft.grid,
+        potential=tuple(_bound(piece, reader.units) for piece in draft.potential),
+        packet=tuple(draft.packet),
+        absorber=draft.absorber,
+        propagator=draft.propagator,
+        time=draft.time,
+        region=tuple(draft.region),
+        detector=tuple(draft.detector),
+        output=draft.output,
+        accuracy=_optional_table(raw, "accuracy", AccuracySpec, reader),
         name=reader.file,
         raw=raw,
     )
+
+
+def _draft(raw: dict[str, Any], reader: Reader) -> Draft:
+    """Read every part that rules look at; what cannot be read gets a stand-in."""
+    grid = _grid(raw, reader)
+    reader.axes = tuple(grid) or ("x",)
+    single: dict[str, Any] = {
+        "absorber": _optional_table(raw, "absorber", AbsorberSpec, reader),
+        "propagator": reader.read(PropagatorSpec, raw.get("propagator", {}), ("propagator",)),
+        "time": reader.read(TimeSpec, raw.get("time", {}), ("time",)),
+        "output": reader.read(OutputSpec, raw.get("output", {}), ("output",)),
+    }
+    _optional_table(raw, "accuracy", AccuracySpec, reader)
+    lists: dict[str, Any] = {
+        "potential": _shaped(raw, "potential", SHAPES, reader),
+        "packet": _shaped(raw, "packet", PACKETS, reader),
+        "region": _list(raw, "region", RegionSpec, reader),
+        "detector": _list(raw, "detector", DetectorSpec, reader),
+    }
+    if not raw.get("packet"):
+        reader.fault(("packet",), "missing; need at least one [[packet]], the initial state")
+    broken = {key for key, value in single.items() if value is UNREADABLE}
+    broken |= {key for key, items in lists.items() if UNREADABLE in items}
+    if not grid or UNREADABLE in grid.values():
+        broken.add("grid")
+    single |= {key: _STAND_INS[key] for key in broken & single.keys()}
+    single["absorber"] = _spread(single["absorber"], reader.axes)
+    axes = {name: AxisSpec() if axis is UNREADABLE else axis for name, axis in grid.items()}
+    return Draft(grid=axes, **single, **lists, broken=frozenset(broken))
+
+
+def _title(raw: Any, reader: Reader) -> str:  # noqa: ANN401 - any TOML value
+    if isinstance(raw, str):
+        return raw
+    reader.fault(("title",), f"need a text, got {shown(raw)}")
+    return ""
 
 
 def _units(raw: Any, reader: Reader) -> UnitSystem:  # noqa: ANN401 - any TOML value
@@ -180,20 +209,23 @@ def _parameters(raw: Any, reader: Reader) -> dict[str, float]:  # noqa: ANN401 -
     return values
 
 
-def _grid(raw: Mapping[str, Any], reader: Reader) -> dict[str, AxisSpec] | None:
+def _grid(raw: Mapping[str, Any], reader: Reader) -> dict[str, Any]:
+    """Return each axis in order, `UNREADABLE` in the place of a faulty one."""
     if "grid" not in raw:
         reader.fault(("grid",), "missing; need [grid] with x = { from, to, points, ends }")
-        return None
+        return {}
     table = reader.table(raw["grid"], ("grid",))
     if table is None:
-        return None
+        return {}
     reader.known_keys(table, ("x", "y"), ("grid",))
     if "x" not in table:
         reader.fault(("grid", "x"), "missing; need x = { from, to, points, ends }")
-        return None
-    reader.axes = tuple(axis for axis in ("x", "y") if axis in table)
-    found = {axis: reader.read(AxisSpec, table[axis], ("grid", axis)) for axis in reader.axes}
-    return None if UNREADABLE in found.values() else found
+    names = tuple(axis for axis in ("x", "y") if axis in table)
+    return {axis: reader.read(AxisSpec, table[axis], ("grid", axis)) for axis in names}
+
+
+def _optional_table(raw: Mapping[str, Any], key: str, cls: type, reader: Reader) -> Any:  # noqa: ANN401 - an instance
+    return reader.read(cls, raw[key], (key,)) if key in raw else None
 
 
 def _required_table(raw: Mapping[str, Any], key: str, cls: type, reader: Reader) -> Any:  # noqa: ANN401 - an instance
@@ -211,41 +243,49 @@ def _items(raw: Mapping[str, Any], key: str, reader: Reader) -> list[Any]:
     return items
 
 
-def _shaped(raw: Mapping[str, Any], key: str, classes: Mapping[str, type], reader: Reader) -> Any:  # noqa: ANN401 - a tuple of instances
+def _shaped(
+    raw: Mapping[str, Any], key: str, classes: Mapping[str, type], reader: Reader
+) -> list[Any]:
     """Read the tables of a list whose class depends on their ``shape``."""
-    found = []
-    for i, item in enumerate(_items(raw, key, reader)):
-        path: Path = (key, i)
-        table = reader.table(item, path)
-        if table is None:
-            found.append(UNREADABLE)
-            continue
-        shape = table.get("shape")
-        if not isinstance(shape, str) or shape not in classes:
-            what = "missing" if shape is None else f"unknown shape {shown(shape)}"
-            hint = nearest(str(shape), classes) if shape is not None else (
-                f"; known: {', '.join(sorted(classes))}"
-            )
-            reader.fault((*path, "shape"), f"{what}{hint}")
-            found.append(UNREADABLE)
-            continue
-        value = reader.read(classes[shape], table, path, extra=("shape",))
-        if value is not UNREADABLE:
-            value = value if value.name else replace(value, name=f"{shape}{i}")
-            for inner, message in value.faults(reader.axes):
-                reader.fault((*path, *inner.split(".")), message)
-        found.append(value)
-    return UNREADABLE if UNREADABLE in found else tuple(found)
+    return [
+        _one_shaped(item, (key, i), classes, reader)
+        for i, item in enumerate(_items(raw, key, reader))
+    ]
 
 
-def _list(raw: Mapping[str, Any], key: str, cls: type, reader: Reader) -> Any:  # noqa: ANN401 - a tuple of instances
+def _one_shaped(raw: Any, path: Path, classes: Mapping[str, type], reader: Reader) -> Any:  # noqa: ANN401 - an instance
+    table = reader.table(raw, path)
+    if table is None:
+        return UNREADABLE
+    shape = table.get("shape")
+    if not isinstance(shape, str) or shape not in classes:
+        wanted = f"need one of {', '.join(sorted(classes))}"
+        if shape is None:
+            reader.fault((*path, "shape"), f"missing; {wanted}")
+        else:
+            hint = nearest(shape, classes) if isinstance(shape, str) else ""
+            reader.fault((*path, "shape"), f"{wanted}, got {shown(shape)}{hint}")
+        return UNREADABLE
+    value = reader.read(classes[shape], table, path, extra=("shape",))
+    if value is UNREADABLE:
+        return value
+    value = value if value.name else replace(value, name=f"{shape}{path[-1]}")
+    found = value.faults(reader.axes)
+    for inner, message in found:
+        reader.fault((*path, *inner.split(".")), message)
+    return UNREADABLE if found else value
+
+
+def _list(raw: Mapping[str, Any], key: str, cls: type, reader: Reader) -> list[Any]:
     found = []
     for i, item in enumerate(_items(raw, key, reader)):
         value = reader.read(cls, item, (key, i))
         if value is not UNREADABLE and not value.name:
             value = replace(value, name=f"{key}{i}")
+        if getattr(value, "role", "") == "held":
+            value = replace(value, role="none")
         found.append(value)
-    return UNREADABLE if UNREADABLE in found else tuple(found)
+    return found
 
 
 def _bound(piece: Any, units: UnitSystem) -> Any:  # noqa: ANN401 - a piece

@@ -8,6 +8,9 @@ from wavepack.errors import Fault
 from wavepack.scenario.lines import Path
 from wavepack.scenario.reader import nearest
 
+#: Lists of tables, which an override does not create.
+LISTS = ("potential", "packet", "region", "detector")
+
 
 def apply_overrides(
     raw: dict[str, Any], overrides: Sequence[str]
@@ -50,14 +53,17 @@ def _set(raw: dict[str, Any], key: str, value: Any) -> Path:  # noqa: ANN401 - a
     node: Any = raw
     path: Path = ()
     parts = key.split(".")
+    if parts[0] in LISTS and parts[0] not in raw:
+        raise ValueError(f"the scenario has no [[{parts[0]}]] to set this in")
     for position, part in enumerate(parts):
         if isinstance(node, list):
-            index, taken = _item(node, part, path)
+            items = node
+            index, taken = _item(items, part, path)
             path = (*path, index)
-            node = node[index]
+            node = items[index]
             if taken:
                 if position == len(parts) - 1:
-                    raise ValueError(f"need a key inside {'.'.join(map(str, path))}, got none")
+                    items[index] = value
                 continue
         if not isinstance(node, dict):
             raise ValueError(f"{'.'.join(map(str, path))} is no table, it has no {part}")
@@ -72,6 +78,8 @@ def _set(raw: dict[str, Any], key: str, value: Any) -> Path:  # noqa: ANN401 - a
 def _item(items: list[Any], part: str, path: Path) -> tuple[int, bool]:
     """Return which item is meant, and whether the part named it."""
     place = ".".join(map(str, path))
+    if not items:
+        raise ValueError(f"{place} is empty: there is no {part} to set")
     if part.isdecimal():
         if int(part) >= len(items):
             raise ValueError(f"{place} has {len(items)} item(s), numbered from 0; got {part}")

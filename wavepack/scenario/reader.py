@@ -1,6 +1,7 @@
 """From TOML values to declared dataclasses, gathering every fault on the way."""
 
 import difflib
+import operator
 import re
 from collections.abc import Iterable, Mapping
 from dataclasses import MISSING, dataclass, fields
@@ -55,12 +56,21 @@ class Reader:
     def fault(self, path: Path, message: str) -> None:
         """Note a fault at a key."""
         key = dotted(path)
+        text = self._override(path)
+        if text is None:
+            self.faults.append(Fault(key, message, self.lines.find(path), self.file))
+        else:
+            self.faults.append(Fault(key, message, None, f"--set {text}"))
+
+    def _override(self, path: Path) -> str | None:
+        """Return the override that set a path, or made the tables around its own."""
         for length in range(len(path), 0, -1):
             if path[:length] in self.overridden:
-                shown = f"--set {self.overridden[path[:length]]}"
-                self.faults.append(Fault(key, message, None, shown))
-                return
-        self.faults.append(Fault(key, message, self.lines.find(path), self.file))
+                return self.overridden[path[:length]]
+        if path in self.lines:
+            return None
+        made = (text for own, text in self.overridden.items() if own[: len(path)] == path)
+        return next(made, None)
 
     def known_keys(self, raw: Mapping[str, Any], known: Iterable[str], path: Path) -> None:
         """Note a fault for every key that is not known, naming the nearest."""
@@ -185,11 +195,17 @@ class Reader:
     def _expression(self, cls: type, raw: Any) -> Expression:  # noqa: ANN401 - any TOML value
         if not isinstance(raw, str):
             raise ValueError(f"need a formula as a text, got {shown(raw)}")
-        variables = ("t",) if issubclass(cls, Drive) else ("x", "y")
+        allowed = ("t",) if issubclass(cls, Drive) else self.axes
         try:
-            return compile_expression(raw, variables, self.parameters)
+            expression = compile_expression(raw, ("x", "y", "t"), self.parameters)
         except ExpressionError as error:
             raise ValueError(f"{shown(raw)}: {error}") from None
+        others = sorted(expression.names - set(allowed))
+        if others:
+            hint = "; give time to a drive" if others == ["t"] else ""
+            wanted = f"need an expression in {' and '.join(allowed)}"
+            raise ValueError(f"{wanted}, found {', '.join(others)} in {shown(raw)}{hint}")
+        return expression
 
     def _tables(self, cls: type, raw: Any, path: Path) -> Any:  # noqa: ANN401 - a tuple of instances
         if not isinstance(raw, list):
@@ -228,6 +244,9 @@ def _required(cls: type, name: str) -> bool:
 
 
 def _whole(raw: Any) -> int:  # noqa: ANN401 - any TOML value
+    # A sweep gives 1024.0 where it means 1024.
+    if isinstance(raw, float) and raw.is_integer():
+        return int(raw)
     if isinstance(raw, bool) or not isinstance(raw, int):
         raise ValueError(f"need a whole number, got {shown(raw)}")
     return raw
@@ -245,11 +264,11 @@ def _check_bounds(spec: Spec, value: Any) -> None:  # noqa: ANN401 - numbers or 
     for number in numbers:
         if isinstance(number, bool) or not isinstance(number, int | float):
             continue
-        for bound, holds, sign in (
-            (spec.above, lambda n, b: n > b, ">"),
-            (spec.at_least, lambda n, b: n >= b, ">="),
-            (spec.below, lambda n, b: n < b, "<"),
-            (spec.at_most, lambda n, b: n <= b, "<="),
+        for bound, compare, sign in (
+            (spec.above, operator.gt, ">"),
+            (spec.at_least, operator.ge, ">="),
+            (spec.below, operator.lt, "<"),
+            (spec.at_most, operator.le, "<="),
         ):
-            if bound is not None and not holds(number, bound):
-                raise ValueError(f"need a value {sign} {bound:g}, got {number:g}")
+            if bound is not None and not compare(number, bound):
+                raise ValueError(f"need a value {sign} {bound:g}, got {shown(number)}")

@@ -2,67 +2,101 @@
 
 import math
 from collections import Counter
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any, Final, TypeAlias
 
 from wavepack.fields import Span
 from wavepack.physics.packets import ChannelPacket, Eigenstate, GaussianPacket
 from wavepack.scenario.lines import Path
-from wavepack.scenario.reader import Reader
-from wavepack.scenario.schema import AxisSpec, DetectorSpec, Scenario
+from wavepack.scenario.reader import UNREADABLE, Reader
+from wavepack.scenario.schema import (
+    AbsorberSpec,
+    AxisSpec,
+    DetectorSpec,
+    OutputSpec,
+    PropagatorSpec,
+    TimeSpec,
+)
 
 #: More points than this cannot be meant: the state alone would take 32 GiB.
-MOST_POINTS = 2**31
+MOST_POINTS: Final = 2**31
+#: Nor can more steps.
+MOST_STEPS: Final = 1e12
 
-Found = Iterator[tuple[Path, str]]
-
-
-def check_rules(scenario: Scenario, reader: Reader) -> None:
-    """Note every fault; rules that need numbers left out wait for them."""
-    rules = [
-        _left_out, _names, _propagator, _masses, _drives, _absorber, _grid, _places, _regions,
-        _detectors, _time, _output,
-    ]
-    for rule in rules:
-        for path, message in rule(scenario):
-            reader.fault(path, message)
+Found: TypeAlias = Iterator[tuple[Path, str]]
 
 
-def require_numerics(scenario: Scenario) -> list[tuple[Path, str]]:
-    """Return what has been left out and must be given: (path, what to give)."""
-    found: list[tuple[Path, str]] = []
-    for name, axis in scenario.grid.items():
+@dataclass(frozen=True)
+class Draft:
+    """The parts of a scenario as far as they could be read.
+
+    Attributes
+    ----------
+    grid, absorber, propagator, time, output
+        As in a Scenario, or a stand-in where the part is in ``broken``.
+    potential, packet, region, detector : sequence
+        With `UNREADABLE` in the place of an item that could not be read.
+    broken : set of str
+        Names of parts that could not be read whole.
+    """
+
+    grid: Mapping[str, AxisSpec]
+    absorber: AbsorberSpec | None
+    propagator: PropagatorSpec
+    time: TimeSpec
+    output: OutputSpec
+    potential: Sequence[Any]
+    packet: Sequence[Any]
+    region: Sequence[Any]
+    detector: Sequence[Any]
+    broken: frozenset[str] = frozenset()
+
+    def items(self, key: str) -> list[tuple[int, Any]]:
+        """Return number and item of those of a list that could be read."""
+        return [(i, x) for i, x in enumerate(getattr(self, key)) if x is not UNREADABLE]
+
+
+def check_rules(draft: Draft, reader: Reader) -> None:
+    """Note every fault; a rule waits for the parts it needs whole."""
+    for rule, needs in _RULES:
+        if not draft.broken & set(needs):
+            for path, message in rule(draft):
+                reader.fault(path, message)
+
+
+def require_numerics(draft: Draft) -> Found:
+    """Yield what has been left out and must be given: (path, what to give)."""
+    for name, axis in draft.grid.items():
         for key, value in (("from", axis.start), ("to", axis.stop), ("points", axis.points)):
             if value is None:
-                found.append((("grid", name, key), f"left out; give {key} of axis {name}"))
-    if scenario.propagator.step is None:
-        found.append((("propagator", "step"), "left out; give the longest time step"))
-    if scenario.time.end is None:
-        found.append((("time", "end"), "left out; give the time when the run ends"))
-    absorbing = [name for name, axis in scenario.grid.items() if "absorbing" in axis.ends]
-    if absorbing:
-        width = scenario.absorber.width if scenario.absorber else {}
-        missing = [name for name in absorbing if name not in width]
-        if missing:
-            what = f"left out; axis {', '.join(missing)} has an absorbing end: give [absorber] width"
-            found.append((("absorber", "width") if scenario.absorber else ("absorber",), what))
-    return found
+                yield ("grid", name, key), f"left out; give {key} of axis {name}"
+    if draft.propagator.step is None:
+        yield ("propagator", "step"), "left out; give the longest time step"
+    if draft.time.end is None:
+        yield ("time", "end"), "left out; give the time when the run ends"
+    width = draft.absorber.width if draft.absorber else {}
+    absorbing = [name for name, axis in draft.grid.items() if "absorbing" in axis.ends]
+    missing = [name for name in absorbing if name not in width]
+    if missing:
+        what = f"left out; axis {', '.join(missing)} has an absorbing end: give [absorber] width"
+        yield (("absorber", "width") if draft.absorber else ("absorber",)), what
 
 
-def _left_out(scenario: Scenario) -> Found:
-    yield from require_numerics(scenario)
-
-
-def _names(scenario: Scenario) -> Found:
+def _names(draft: Draft) -> Found:
     for key in ("potential", "packet", "region", "detector"):
-        items = getattr(scenario, key)
-        counts = Counter(item.name for item in items)
-        for i, item in enumerate(items):
+        items = draft.items(key)
+        counts = Counter(item.name for _, item in items)
+        for i, item in items:
             if counts[item.name] > 1:
-                yield (key, i, "name"), f"need names unique within {key}, got {item.name} twice"
+                message = (
+                    f"need names unique within {key}, got {item.name} {counts[item.name]} times"
+                )
+                yield (key, i, "name"), message
 
 
-def _propagator(scenario: Scenario) -> Found:
-    spec = scenario.propagator
+def _propagator(draft: Draft) -> Found:
+    spec = draft.propagator
     if spec.method == "split-operator":
         if spec.order not in (None, 2, 4):
             yield ("propagator", "order"), f"need 2 or 4 for split-operator, got {spec.order}"
@@ -81,21 +115,20 @@ def _propagator(scenario: Scenario) -> Found:
         yield ("propagator", "space_order"), f"need 2 or 4, got {spec.space_order}"
 
 
-def _masses(scenario: Scenario) -> Found:
-    if scenario.propagator.method != "split-operator":
+def _masses(draft: Draft) -> Found:
+    if draft.propagator.method != "split-operator":
         return
-    for i, piece in enumerate(scenario.potential):
+    for i, piece in draft.items("potential"):
         layers = getattr(piece, "layers", ())
         if getattr(piece, "mass", None) is not None or any(x.mass is not None for x in layers):
             yield (
                 ("potential", i, "mass"),
-                "the split operator carries one mass only: "
-                'set propagator.method = "crank-nicolson"',
+                'the split operator carries one mass: need propagator.method = "crank-nicolson"',
             )
 
 
-def _drives(scenario: Scenario) -> Found:
-    for i, piece in enumerate(scenario.potential):
+def _drives(draft: Draft) -> Found:
+    for i, piece in draft.items("potential"):
         if piece.drive is None:
             continue
         if piece.acts == "before":
@@ -104,36 +137,38 @@ def _drives(scenario: Scenario) -> Found:
             yield ("potential", i, "drive", *key.split(".")), message
 
 
-def _absorber(scenario: Scenario) -> Found:
-    spec = scenario.absorber
+def _absorber(draft: Draft) -> Found:
+    spec = draft.absorber
     if spec is None:
         return
     if spec.strength is not None and spec.lowest_energy is not None:
         yield ("absorber", "strength"), "need either strength or lowest_energy, got both"
     for name in spec.width:
-        if name not in scenario.grid:
+        if name not in draft.grid:
             yield ("absorber", "width", name), f"need an axis of the grid, got {name}"
-    for name, axis in scenario.grid.items():
+    for name, axis in draft.grid.items():
         if axis.start is None or axis.stop is None or name not in spec.width:
             continue
-        layers = sum(
+        absorbing = [
             width
             for width, end in zip(spec.width[name], axis.ends, strict=True)
             if end == "absorbing"
-        )
+        ]
+        layers = sum(absorbing)
+        if not all(absorbing):
+            yield ("absorber", "width"), f"need a width > 0 at each absorbing end of {name}, got 0"
         if layers >= axis.stop - axis.start:
             yield (
                 ("absorber", "width"),
-                f"need layers narrower than axis {name} ({axis.stop - axis.start:g}), "
-                f"got {layers:g} in all",
+                f"need layers narrower than the axis {name} ({_extent(axis)}), got {layers:g}",
             )
 
 
-def _grid(scenario: Scenario) -> Found:
-    total = math.prod(axis.points or 1 for axis in scenario.grid.values())
+def _grid(draft: Draft) -> Found:
+    total = math.prod(axis.points or 1 for axis in draft.grid.values())
     if total > MOST_POINTS:
         yield ("grid",), f"need at most {MOST_POINTS} points in all, got {total}"
-    for name, axis in scenario.grid.items():
+    for name, axis in draft.grid.items():
         if axis.start is not None and axis.stop is not None and axis.stop <= axis.start:
             yield (
                 ("grid", name, "to"),
@@ -141,59 +176,66 @@ def _grid(scenario: Scenario) -> Found:
             )
 
 
-def _places(scenario: Scenario) -> Found:
-    names = {piece.name for piece in scenario.potential}
-    for i, packet in enumerate(scenario.packet):
+def _places(draft: Draft) -> Found:
+    for i, packet in draft.items("packet"):
         if isinstance(packet, GaussianPacket | ChannelPacket):
             for axis, value in packet.center.items():
-                if not _inside(scenario.grid[axis], value):
+                if not _inside(draft.grid[axis], value):
                     yield (
                         ("packet", i, "center", axis),
-                        f"need a place on axis {axis} ({_extent(scenario.grid[axis])}), "
-                        f"got {value:g}",
+                        f"need a place on axis {axis} ({_extent(draft.grid[axis])}), got {value:g}",
                     )
-        if isinstance(packet, Eigenstate):
-            for name in packet.of:
-                if name not in names:
-                    known = ", ".join(sorted(names)) or "none"
-                    yield ("packet", i, "of"), f"no potential is named {name}; named: {known}"
 
 
-def _regions(scenario: Scenario) -> Found:
-    for i, spec in enumerate(scenario.region):
+def _binding(draft: Draft) -> Found:
+    names = {piece.name for _, piece in draft.items("potential")}
+    known = ", ".join(sorted(names)) or "none"
+    for i, packet in draft.items("packet"):
+        if not isinstance(packet, Eigenstate):
+            continue
+        for name in packet.of:
+            if name not in names:
+                yield ("packet", i, "of"), f"no potential is named {name}; named: {known}"
+
+
+def _conditions(draft: Draft) -> Found:
+    for key in ("packet", "region"):
+        for i, item in draft.items(key):
+            if item.where is not None and not item.where.logical:
+                message = f"need a comparison such as x > 0, got {item.where.text!r}"
+                yield (key, i, "where"), message
+
+
+def _regions(draft: Draft) -> Found:
+    for i, spec in draft.items("region"):
         if spec.where is None and not spec.spans:
             yield ("region", i), "need its extent: x or y = { from, to }, or where"
         if spec.where is not None and spec.spans:
             yield ("region", i, "where"), "need either where or x and y, got both"
-        if spec.where is not None and not spec.where.logical:
-            yield (
-                ("region", i, "where"),
-                f"need a comparison such as x > 0, got {spec.where.text!r}",
-            )
         used = set(spec.spans) | (set(spec.where.names) if spec.where else set())
-        for axis in sorted(used - set(scenario.grid)):
+        for axis in sorted(used - set(draft.grid)):
             yield ("region", i, axis), f"need an axis of the grid, got {axis}"
         for axis, span in spec.spans.items():
-            if axis in scenario.grid and not _meets(scenario.grid[axis], span):
+            if axis in draft.grid and not _meets(draft.grid[axis], span):
                 yield (
                     ("region", i, axis),
-                    f"lies outside axis {axis} ({_extent(scenario.grid[axis])})",
+                    f"lies outside axis {axis} ({_extent(draft.grid[axis])})",
                 )
 
 
-def _detectors(scenario: Scenario) -> Found:
-    for i, spec in enumerate(scenario.detector):
+def _detectors(draft: Draft) -> Found:
+    for i, spec in draft.items("detector"):
         path: Path = ("detector", i)
         places = [key for key in ("x", "y") if isinstance(getattr(spec, key), float)]
         if len(places) != 1:
             yield path, "need one plane: x = at or y = at"
             continue
         axis = places[0]
-        if axis not in scenario.grid:
+        if axis not in draft.grid:
             yield (*path, axis), f"need an axis of the grid, got {axis}"
             continue
         for other in spec.spans:
-            if other not in scenario.grid:
+            if other not in draft.grid:
                 yield (*path, other), f"need an axis of the grid, got {other}"
         if spec.toward is not None and spec.toward[1] != axis:
             yield (
@@ -201,55 +243,53 @@ def _detectors(scenario: Scenario) -> Found:
                 f"need +{axis} or -{axis} for a plane across {axis}, got {spec.toward}",
             )
         if spec.energies is not None and spec.energies.stop <= spec.energies.start:
-            yield (*path, "energies", "to"), "need to > from"
-        yield from _detector_place(scenario, spec, path)
+            start, stop = spec.energies.start, spec.energies.stop
+            yield (*path, "energies", "to"), f"need to > from = {start:g}, got {stop:g}"
+        yield from _detector_place(draft, spec, path)
 
 
-def _detector_place(scenario: Scenario, spec: DetectorSpec, path: Path) -> Found:
-    axis = scenario.grid[spec.axis]
+def _detector_place(draft: Draft, spec: DetectorSpec, path: Path) -> Found:
+    axis = draft.grid[spec.axis]
     if not _inside(axis, spec.at):
         yield (
             (*path, spec.axis),
             f"need a place on axis {spec.axis} ({_extent(axis)}), got {spec.at:g}",
         )
         return
-    if scenario.absorber is None or axis.start is None or axis.stop is None:
+    if draft.absorber is None or axis.start is None or axis.stop is None:
         return
-    lower, upper = scenario.absorber.width.get(spec.axis, (0.0, 0.0))
+    lower, upper = draft.absorber.width.get(spec.axis, (0.0, 0.0))
     inner = (
         axis.start + (lower if axis.ends[0] == "absorbing" else 0.0),
         axis.stop - (upper if axis.ends[1] == "absorbing" else 0.0),
     )
-    if not inner[0] <= spec.at <= inner[1]:
+    if inner[0] < inner[1] and not inner[0] <= spec.at <= inner[1]:
         yield (
             (*path, spec.axis),
             f"stands inside an absorber: need {inner[0]:g} to {inner[1]:g}, got {spec.at:g}",
         )
 
 
-def _time(scenario: Scenario) -> Found:
-    absorbing = any("absorbing" in axis.ends for axis in scenario.grid.values())
-    if scenario.time.stop_when_left_below is not None and not absorbing:
+def _time(draft: Draft) -> Found:
+    absorbing = any("absorbing" in axis.ends for axis in draft.grid.values())
+    if draft.time.stop_when_left_below is not None and not absorbing:
         yield ("time", "stop_when_left_below"), "needs an absorbing end: nothing leaves this grid"
-    end, step = scenario.time.end, scenario.propagator.step
-    if end is not None and step is not None and end / step > 1e12:
+    end, step = draft.time.end, draft.propagator.step
+    if end is not None and step is not None and end / step > MOST_STEPS:
         yield ("propagator", "step"), f"need at most 1e12 steps, got {end / step:.3g}"
 
 
-def _output(scenario: Scenario) -> Found:
-    fewest = min((axis.points or 2**31 for axis in scenario.grid.values()), default=1)
-    if scenario.output.thin > fewest // 4:
+def _output(draft: Draft) -> Found:
+    fewest = min((axis.points or 2**31 for axis in draft.grid.values()), default=1)
+    if draft.output.thin > fewest // 4:
         yield (
             ("output", "thin"),
-            f"need at least 4 points left along each axis: at most {max(1, fewest // 4)}, "
-            f"got {scenario.output.thin}",
+            f"need at most {max(1, fewest // 4)}, to leave 4 points, got {draft.output.thin}",
         )
 
 
 def _inside(axis: AxisSpec, place: float) -> bool:
-    return (axis.start is None or place >= axis.start) and (
-        axis.stop is None or place <= axis.stop
-    )
+    return (axis.start is None or place >= axis.start) and (axis.stop is None or place <= axis.stop)
 
 
 def _meets(axis: AxisSpec, span: Span) -> bool:
@@ -261,3 +301,22 @@ def _meets(axis: AxisSpec, span: Span) -> bool:
 def _extent(axis: AxisSpec) -> str:
     ends = ["?" if end is None else f"{end:g}" for end in (axis.start, axis.stop)]
     return " to ".join(ends)
+
+
+#: Every rule, and the parts it needs whole.
+_RULES: Final[tuple[tuple[Callable[[Draft], Found], tuple[str, ...]], ...]] = (
+    (require_numerics, ("grid", "absorber", "propagator", "time")),
+    (_names, ()),
+    (_propagator, ("propagator",)),
+    (_masses, ("propagator",)),
+    (_drives, ()),
+    (_absorber, ("absorber",)),
+    (_grid, ()),
+    (_places, ()),
+    (_binding, ("potential",)),
+    (_conditions, ()),
+    (_regions, ()),
+    (_detectors, ()),
+    (_time, ("grid", "time", "propagator")),
+    (_output, ("output",)),
+)

@@ -73,7 +73,7 @@ class AbsorberSpec:
 
     width: Mapping[str, tuple[float, float]] = declare(
         "custom",
-        "width of the layer at each absorbing end [length]: one, a pair of ends, or a table by axis",
+        "width of the layer at each absorbing end: one, a pair of ends, or either for each axis",
         default={},
     )
     form: str = declare(
@@ -127,7 +127,8 @@ def _width_pair(raw: object, units: UnitSystem) -> tuple[float, float]:
     if len(pair) != 2:
         raise ValueError(f"need one width or a pair [lower, upper], got {raw!r}")
     lower, upper = (units.convert(value, "length") for value in pair)
-    if not (lower > 0 and upper > 0):
+    # 0 is for an end of a pair that does not absorb.
+    if not (lower >= 0 and upper >= 0 and lower + upper > 0):
         raise ValueError(f"need a width > 0, got {raw!r}")
     return (lower, upper)
 

@@ -16,38 +16,32 @@ def to_toml(scenario: Scenario) -> str:
 
 
 def _document(scenario: Scenario) -> Iterator[str]:
-    units = scenario.units
     yield f"title = {_text(scenario.title)}"
     yield from ("", "[units]")
     for key in ("length", "energy", "time", "mass"):
-        yield f"{key} = {_text(getattr(units, key))}"
+        yield f"{key} = {_text(getattr(scenario.units, key))}"
     if scenario.parameters:
         yield from ("", "[parameters]")
-        for name, number in scenario.parameters.items():
-            yield f"{name} = {_number(number)}"
+        yield from (f"{name} = {_number(x)}" for name, x in scenario.parameters.items())
     particle = ParticleSpec(mass=scenario.particle.mass, charge=scenario.particle.charge)
     yield from _table("particle", particle)
     yield from ("", "[grid]")
-    for name, axis in scenario.grid.items():
-        yield f"{name} = {_inline(_entries(axis))}"
-    for piece in scenario.potential:
-        yield from _item("potential", piece, shape=piece.shape)
-    for packet in scenario.packet:
-        yield from _item("packet", packet, shape=packet.shape)
-    if scenario.absorber is not None:
-        yield from _table("absorber", scenario.absorber)
-    yield from _table("propagator", scenario.propagator)
-    yield from _table("time", scenario.time)
-    for region in scenario.region:
-        yield from _item("region", region)
-    for detector in scenario.detector:
-        yield from _item("detector", detector)
-    yield from _table("output", scenario.output)
-    if scenario.accuracy is not None:
-        yield from _table("accuracy", scenario.accuracy)
+    yield from (f"{name} = {_inline(_entries(axis))}" for name, axis in scenario.grid.items())
+    for key in ("potential", "packet"):
+        for shaped in getattr(scenario, key):
+            yield from _item(key, shaped, shape=shaped.shape)
+    for key in ("absorber", "propagator", "time"):
+        yield from _table(key, getattr(scenario, key))
+    for key in ("region", "detector"):
+        for item in getattr(scenario, key):
+            yield from _item(key, item)
+    for key in ("output", "accuracy"):
+        yield from _table(key, getattr(scenario, key))
 
 
 def _table(key: str, value: Any) -> Iterator[str]:  # noqa: ANN401 - any declared dataclass
+    if value is None:
+        return
     yield from ("", f"[{key}]")
     for name, text in _entries(value).items():
         yield f"{name} = {text}"
@@ -71,7 +65,7 @@ def _entries(value: Any) -> dict[str, str]:  # noqa: ANN401 - any declared datac
     return found
 
 
-def _value(cls: type, name: str, spec: Spec, value: Any) -> str | None:  # noqa: ANN401, PLR0911 - one line a kind
+def _value(cls: type, name: str, spec: Spec, value: Any) -> str | None:  # noqa: ANN401 - one line a kind
     if value is None or value == Span() or value in ({}, ()):
         return None
     if spec.kind == "custom":
