@@ -48,15 +48,25 @@ def test_formula_drives() -> None:
         envelope=Envelope(rise=1.0, stop=4.0),
     )
     assert drive.factor(2.0) == pytest.approx(2 * math.exp(-2))
-    # 2 exp(-t) sin^2(pi t/2) is largest where tan(pi t/2) = pi.
-    largest = 2 * math.exp(-2 * math.atan(math.pi) / math.pi) * math.pi**2 / (1 + math.pi**2)
-    assert drive.largest() == pytest.approx(largest, rel=1e-6)
+    assert drive.largest() == pytest.approx(2.0)
     assert drive.period(HBAR) is None
 
 
 def test_largest_bounds_an_oscillation() -> None:
     """No factor exceeds |offset| + 1."""
     assert Drive(photon_energy=0.1, offset=-0.5).largest() == 1.5
+
+
+def test_largest_of_a_formula_within_its_time() -> None:
+    """A late pulse is seen, what lies beyond the time asked for is not, nor what is no number."""
+    pulse = Drive(formula=compile_expression("3*exp(-((t - 900)/5)**2) + 1/(t - 500)", ("t",)))
+    assert pulse.largest(until=1000.0) > 3.0
+    growing = compile_expression("t", ("t",))
+    assert Drive(formula=growing).largest(until=50.0) == 50.0
+    early = Drive(formula=growing, envelope=Envelope(rise=1.0, stop=7.0))
+    assert early.largest(until=50.0) == 7.0
+    late = Drive(formula=growing, envelope=Envelope(rise=1.0, start=60.0))
+    assert late.largest(until=50.0) == 0.0
 
 
 def test_formula_not_finite_is_refused() -> None:

@@ -144,18 +144,25 @@ class Drive:
             return None
         return 2 * math.pi * hbar / self.photon_energy
 
-    def largest(self) -> float:
+    def largest(self, until: float = 1e4) -> float:
         """Return a bound of |f|; for a formula, the largest of many samples.
 
-        Samples lie within the envelope, else at 0 and on a geometric scale from
-        1e-3 to 1e6 units of time.
+        Parameters
+        ----------
+        until : float
+            Times from 0, or from the start of the envelope, to this one, or to
+            the end of the envelope if that comes first [time].
         """
         if self.formula is None:
             return abs(self.offset) + (self.photon_energy is not None)
-        start = 0.0 if self.envelope is None else self.envelope.start
-        stop = None if self.envelope is None else self.envelope.stop
-        if stop is not None:
-            times = np.linspace(start, stop, 4097)
-        else:
-            times = start + np.concatenate(([0.0], np.geomspace(1e-3, 1e6, 4096)))
-        return max(abs(self.factor(float(t))) for t in times)
+        start, stop = 0.0, until
+        if self.envelope is not None:
+            start = max(start, self.envelope.start)
+            stop = min(until, math.inf if self.envelope.stop is None else self.envelope.stop)
+        if not start < stop:
+            return 0.0
+        # Evenly, for what happens late; and ever finer towards the start.
+        span = stop - start
+        shares = np.concatenate((np.linspace(0, 1, 1 << 14), np.geomspace(1e-8, 1, 1 << 12)))
+        values = np.abs(np.asarray(self.formula.evaluate(t=start + span * shares)))
+        return float(np.max(values, where=np.isfinite(values), initial=0.0))
