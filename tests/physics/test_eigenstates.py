@@ -98,7 +98,7 @@ def test_morse_levels() -> None:
 
 
 def test_softcore_levels() -> None:
-    """-0.66977714, -0.27489135, -0.15145467 for softening 1 [Javanainen1988]_, a.u.
+    """-0.66977714, -0.27489135, -0.15145467 for softening 1 [JavanainenEberlySu1988]_, a.u.
 
     The closed form -1/2 for softening sqrt(2) too.
     """
