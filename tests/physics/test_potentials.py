@@ -52,7 +52,7 @@ class Plain:
     def convert(self, value: object, dimension: str) -> float:
         """Return a number as it is; a text is refused."""
         if not isinstance(value, int | float):
-            raise ValueError(f"need {dimension}, got {value!r}")  # noqa: TRY004 - as units do
+            raise ValueError(f"need {dimension}, got {value!r}")
         return float(value)
 
 
@@ -281,6 +281,20 @@ def test_blocks_of_rows_are_parts_of_the_whole(piece: Piece) -> None:
     assert whole.shape == PLANE.shape
     block = sample(piece, PLANE, ELECTRON, slice(10, 31))
     assert block == pytest.approx(whole[10:31], abs=1e-13)
+
+
+def test_edges_are_smoothed_across_the_seam_of_a_ring() -> None:
+    """On a periodic axis a slab all the way round is constant, and half of one has two edges."""
+    ring = Grid((Axis("x", -10.0, 10.0, 100, ("periodic", "periodic")),))
+    whole = sample(Slab(height=1.0, x=Span(-10.0, 10.0)), ring, ELECTRON)
+    assert whole == pytest.approx(np.ones(100), abs=1e-12)
+    for half in (Slab(height=1.0, x=Span(lower=0.0)), Slab(height=1.0, x=Span(0.0, 10.0))):
+        values = sample(half, ring, ELECTRON)
+        assert values.sum() * ring.cell == pytest.approx(10.0, abs=1e-4)
+        assert values[0] == pytest.approx(0.5, abs=1e-3)
+        assert values[50] == pytest.approx(0.5, abs=1e-3)
+        slope = sample_gradient(half, ring, ELECTRON, 0)
+        assert slope[0] == pytest.approx(-slope[50], abs=1e-3)
 
 
 def test_total_adds_what_acts() -> None:

@@ -28,7 +28,7 @@ import numpy as np
 from wavepack.arrays import RealArray
 from wavepack.errors import Fault, ScenarioError
 from wavepack.grid.grid import Grid
-from wavepack.physics.lattice import BLOCK_SAMPLES, blocks
+from wavepack.physics.lattice import BLOCK_SAMPLES, blocks, size
 from wavepack.physics.particle import Particle
 from wavepack.physics.shapes import Faults, Piece
 from wavepack.physics.shapes_free import Formula, Table
@@ -43,7 +43,7 @@ from wavepack.physics.shapes_smooth import (
     Sech2,
     SoftCore,
 )
-from wavepack.physics.smoothing import smoothed
+from wavepack.physics.smoothing import REACH, Function, smoothed
 
 __all__ = [
     "SHAPES",
@@ -102,7 +102,7 @@ def sample(piece: Piece, grid: Grid, particle: Particle, rows: slice = slice(Non
     ----------
     piece : Piece
         What to sample; its edges are smoothed to the spacing
-        (`wavepack.physics.edges`).
+        (`wavepack.physics.edges`), on a periodic axis also across its seam.
     grid : Grid
         Where.
     particle : Particle
@@ -120,12 +120,13 @@ def sample(piece: Piece, grid: Grid, particle: Particle, rows: slice = slice(Non
     ScenarioError
         If V is not finite somewhere.
     """
-    if piece.cell_sampled:
-        values = smoothed(lambda mesh: piece.evaluate(mesh, _spacing(grid), particle), grid, rows)
+    if piece.cell_sampled or _meets_seam(piece, grid):
+        values = smoothed(_unsmoothed(piece, grid, particle), grid, rows)
     else:
         mesh = _mesh(grid, rows)
-        shape = np.broadcast_shapes(*(x.shape for x in mesh))
-        values = np.array(np.broadcast_to(piece.evaluate(mesh, _spacing(grid), particle), shape))
+        values = np.array(
+            np.broadcast_to(piece.evaluate(mesh, _spacing(grid), particle), size(mesh))
+        )
     _check_finite(piece, values, grid, rows)
     return values
 
@@ -146,14 +147,13 @@ def sample_gradient(
     ScenarioError
         If the slope is not finite somewhere.
     """
-    spacing = _spacing(grid)
-    if piece.cell_sampled:
-        slope = smoothed(lambda mesh: piece.evaluate(mesh, spacing, particle), grid, rows, axis)
+    if piece.cell_sampled or _meets_seam(piece, grid):
+        slope = smoothed(_unsmoothed(piece, grid, particle), grid, rows, axis)
         _check_finite(piece, slope, grid, rows)
         return slope
-    mesh = _mesh(grid, rows)
+    mesh, spacing = _mesh(grid, rows), _spacing(grid)
     h = spacing[axis] / SLOPE_STEPS
-    slope = np.zeros(np.broadcast_shapes(*(x.shape for x in mesh)))
+    slope = np.zeros(size(mesh))
     for steps, weight in ((1, 45.0), (2, -9.0), (3, 1.0)):
         for sign in (1, -1):
             moved = list(mesh)
@@ -204,6 +204,29 @@ def total(
                 part *= piece.drive.bound(particle.hbar).factor(time)
             values[block.start - first : block.stop - first] += part
     return values
+
+
+def _meets_seam(piece: Piece, grid: Grid) -> bool:
+    """Whether edges must be smoothed across the seam of a periodic axis.
+
+    So it is where one lies near the seam, or where an odd number of them leaves
+    a jump at the seam itself, as a half-space does.
+    """
+    for i, axis in enumerate(grid.axes):
+        if not piece.sharp or "periodic" not in axis.ends:
+            continue
+        edges = piece.edges(i)
+        reach = REACH * axis.spacing
+        near = any(min(abs(e - axis.start), abs(e - axis.stop)) < reach for e in edges)
+        if near or len(edges) % 2:
+            return True
+    return False
+
+
+def _unsmoothed(piece: Piece, grid: Grid, particle: Particle) -> Function:
+    """Return V with its edges as good as sharp, for `smoothed` to smooth."""
+    spacing = tuple(axis.spacing * 1e-9 for axis in grid.axes)
+    return lambda mesh: piece.evaluate(mesh, spacing, particle)
 
 
 def _spacing(grid: Grid) -> tuple[float, ...]:

@@ -12,7 +12,7 @@ from wavepack.physics.edges import density
 from wavepack.physics.lattice import BLOCK_SAMPLES, SUBDIVISIONS, blocks, lattice, size, wrapped
 
 #: A function of positions along each axis; what it returns broadcasts over them.
-Field: TypeAlias = Callable[[tuple[RealArray, ...]], RealArray]
+Function: TypeAlias = Callable[[tuple[RealArray, ...]], RealArray]
 
 #: Reach of the kernel in spacings; beyond it is below 1e-15.
 REACH: Final = 9
@@ -25,7 +25,7 @@ MARGIN: Final = 2
 
 
 def smoothed(
-    function: Field, grid: Grid, rows: slice = slice(None), slope: int | None = None
+    function: Function, grid: Grid, rows: slice = slice(None), slope: int | None = None
 ) -> RealArray:
     r"""Return a function that may jump, convolved with the kernel K along every axis.
 
@@ -39,7 +39,7 @@ def smoothed(
 
     Parameters
     ----------
-    function : Field
+    function : Function
         V at an open mesh of positions, or at arrays of equal shape.
     grid : Grid
         Where the result is wanted.
@@ -62,7 +62,7 @@ def smoothed(
     )
 
 
-def _block(function: Field, grid: Grid, rows: slice, weights: list[RealArray]) -> RealArray:
+def _block(function: Function, grid: Grid, rows: slice, weights: list[RealArray]) -> RealArray:
     """Convolve one block of rows: along y strip by strip, then along x."""
     count = SUBDIVISIONS[grid.ndim]
     cells = rows.stop - rows.start + 2 * REACH
@@ -103,7 +103,7 @@ def _gather(samples: RealArray, weights: RealArray) -> RealArray:
 
 
 def _fine_samples(
-    function: Field, mesh: tuple[RealArray, ...], spacing: tuple[float, ...]
+    function: Function, mesh: tuple[RealArray, ...], spacing: tuple[float, ...]
 ) -> RealArray:
     """Return samples on a mesh; those next to a jump are averages over their own cell."""
     padded = tuple(
@@ -148,7 +148,7 @@ def _mark_jumps(samples: RealArray, beside: npt.NDArray[np.bool_]) -> None:
     beside[1:] |= jump
 
 
-def _extended(function: Field, grid: Grid) -> Field:
+def _extended(function: Function, grid: Grid) -> Function:
     """Make a function defined everywhere, as `smoothed` says."""
 
     def everywhere(mesh: tuple[RealArray, ...]) -> RealArray:
