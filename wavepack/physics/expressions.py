@@ -269,7 +269,8 @@ def _parsed(text: str) -> ast.expr:
             warnings.simplefilter("ignore")  # "1if x" only warns; it is refused below
             tree = ast.parse(line[shift:], mode="eval").body
     except SyntaxError as error:
-        column = shift + max(error.offset or 1, 1)
+        # Offset 0 stands for the end of the text.
+        column = min(shift + error.offset if error.offset else len(line), len(line))
         raise ExpressionError(f"need an expression, {_complaint(line, column)}", column) from None
     except (ValueError, MemoryError, RecursionError):
         raise ExpressionError("need an expression less long or deep", shift + 1) from None
@@ -305,11 +306,11 @@ def _strange(character: str) -> str:
 
 
 def _complaint(line: str, column: int) -> str:
+    if line[:column].rstrip() == line.rstrip():
+        return f"got {line.strip()[-20:]!r} and no more"
     rest = line[column - 1 : column + 19].strip()
-    hint = ""
-    if rest.startswith("=") or (rest and line[column - 2 : column] == "= "):
-        hint = "; write == to compare"
-    return f"got {rest!r}{hint}" if rest else "got no more of it"
+    hint = "; write == to compare" if rest.startswith("=") else ""
+    return f"got {rest!r}{hint}"
 
 
 def _depth(tree: ast.AST) -> int:
