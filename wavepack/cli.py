@@ -74,7 +74,7 @@ def _explained(error: Exception) -> int:
         case WavepackError():
             _say(str(error))
         case MemoryError():
-            _say(f"out of memory: {error or 'no more to be had'}; a smaller grid needs less")
+            _say(f"out of memory: {str(error) or 'no more to be had'}; a smaller grid needs less")
             return REFUSED
         case OSError():
             where = f"{error.filename}: " if error.filename else ""
@@ -179,7 +179,7 @@ def _conclude(found: dict[str, Any], folder: str, missed: Sequence[str]) -> int:
         return INTERRUPTED
     for text in missed:
         _say(text)
-    _say(f"{folder}: holds the run")
+    _say(f"the run is in {folder}")
     return MISSED if missed else DONE
 
 

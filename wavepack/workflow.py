@@ -113,7 +113,10 @@ def results(folder: Path | str) -> dict[str, Any]:
     MachineError
         If they cannot be read.
     """
-    return read_results(Path(folder))
+    folder = Path(folder)
+    if not folder.is_dir():
+        raise UsageError(f"{folder}: no such folder")
+    return read_results(folder)
 
 
 def movie(

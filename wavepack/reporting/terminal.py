@@ -106,7 +106,7 @@ def progress_text(news: News, unit: str) -> str:
     share = news.step / news.steps if news.steps else 1.0
     end = news.standing.time / share if share else 0.0
     parts = [
-        f"t = {news.standing.time:.4g} of {end:.4g} {unit}",
+        f"t = {news.standing.time:.5g} of {end:.5g} {unit}",
         f"{100 * share:.0f} %",
         *_pace(news),
         f"norm {news.standing.moments.norm:.4f}",
