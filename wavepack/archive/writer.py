@@ -125,7 +125,7 @@ class RunWriter:
         """
         stream = self._stream("frames")
         stream.keep({"time": [time], stream.columns[0]: np.asarray(values)[np.newaxis]})
-        self.flush()
+        self._write([stream])
 
     def append_series(self, rows: Mapping[str, npt.ArrayLike]) -> None:
         """Append rows of every column of the series: numbers, or arrays of equal length.
@@ -223,7 +223,10 @@ class RunWriter:
         MachineError
             If the disk is full or the file cannot be written.
         """
-        streams = [stream for stream in self._streams.values() if stream.kept]
+        self._write([stream for stream in self._streams.values() if stream.kept])
+        self._flushed = time.monotonic()
+
+    def _write(self, streams: list[Stream]) -> None:
         if not streams:
             return
         needed = sum(stream.kept * stream.row_bytes for stream in streams)
@@ -235,7 +238,6 @@ class RunWriter:
             for stream in streams:
                 stream.write_times()
             file.flush()
-        self._flushed = time.monotonic()
 
     def sync(self) -> None:
         """Write all that is buffered and ask the disk to keep it; see `flush`."""

@@ -135,8 +135,11 @@ def _momenta(
         first = second = outside = 0.0
         fast = np.abs(axis.wavenumbers) > limit
         for lines in _lines(psi, grid, i):
-            density = np.abs(spectral.forward(lines, axis)) ** 2
-            along = density.reshape(-1, axis.points).sum(axis=0) * grid.cell
+            coefficients = spectral.forward(lines, axis)
+            density = np.square(coefficients.real)
+            density += np.square(coefficients.imag)
+            along = density.reshape(-1, axis.points).sum(axis=0)
+            along *= grid.cell
             second += float(np.square(axis.wavenumbers) @ along)
             outside += float(along[fast].sum())
             if axis.basis == "fourier":

@@ -58,7 +58,7 @@ class RegionBook:
         self.grid = grid
         self.regions = tuple(regions)
         self.names = tuple(region.name for region in regions)
-        self._kept: dict[tuple[tuple[int, int], ...], tuple[RealArray, ...]] = {}
+        self._kept: dict[tuple[tuple[int, int], ...], RealArray] = {}
 
     def overlap(self) -> float:
         """Return the largest total share of a cell that regions with a role claim."""
@@ -74,7 +74,15 @@ class RegionBook:
 
     def sums(self, box: tuple[slice, ...], values: RealArray) -> RealArray:
         """Return the sums of values over a box: the three parts, then each region."""
-        return np.array([np.sum(w * values) for w in self._weights(_key(box))])
+        key = _key(box)
+        if key in self._kept:
+            return self._kept[key] @ values.ravel()
+        weights = self._weights(box)
+        if self.grid.size > KEPT_POINTS:
+            return np.array([np.sum(w * values) for w in weights])
+        rows = [np.broadcast_to(w, values.shape).ravel() for w in weights]
+        self._kept[key] = np.array(rows)
+        return self._kept[key] @ values.ravel()
 
     def of_patches(self, patches: Sequence[Cells]) -> RealArray:
         """Return the same sums over boxes of removed probability."""
@@ -83,18 +91,12 @@ class RegionBook:
             total += self.sums(patch.box, patch.removed)
         return total
 
-    def _weights(self, key: tuple[tuple[int, int], ...]) -> tuple[RealArray, ...]:
-        if key in self._kept:
-            return self._kept[key]
-        box = tuple(slice(*pair) for pair in key)
+    def _weights(self, box: tuple[slice, ...]) -> tuple[RealArray, ...]:
         transmitted = self._part(box, "transmitted")
         reflected = self._part(box, "reflected")
         neither = 1.0 - transmitted - reflected
         own = (region.weights(box) for region in self.regions)
-        weights = (transmitted, reflected, neither, *own)
-        if self.grid.size <= KEPT_POINTS:
-            self._kept[key] = weights
-        return weights
+        return (transmitted, reflected, neither, *own)
 
     def _part(self, box: tuple[slice, ...], role: Role) -> RealArray:
         total = np.zeros([1] * len(box))

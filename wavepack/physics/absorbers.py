@@ -16,6 +16,9 @@ from wavepack.grid.axis import Axis
 #: sqrt(2) K(1/2), the width of the transmission-free form in its own variable.
 LEMNISCATE: Final = 2.6220575542921198
 
+#: Energies that the search for a strength tells apart.
+MOST_ENERGIES: Final = 48
+
 Form = Literal["transmission-free", "polynomial"]
 
 
@@ -128,8 +131,7 @@ def suited_strength(
     A search over two decades on either side of the mean energy; the layer's own
     strength is ignored.
     """
-    keep = weights > 0
-    energies, weights = energies[keep], weights[keep]
+    energies, weights = _gathered(energies, weights)
     mean = float(np.sum(weights * energies) / np.sum(weights))
 
     def given_back(log_strength: float) -> float:
@@ -145,6 +147,16 @@ def suited_strength(
     best = int(np.argmin(costs))
     fine = np.linspace(scale[max(best - 1, 0)], scale[min(best + 1, scale.size - 1)], 9)
     return mean * math.exp(float(fine[int(np.argmin([given_back(s) for s in fine]))]))
+
+
+def _gathered(energies: RealArray, weights: RealArray) -> tuple[RealArray, RealArray]:
+    """Return at most `MOST_ENERGIES` energies with the weight of those around each."""
+    order = np.argsort(energies)
+    groups = np.array_split(order, min(MOST_ENERGIES, energies.size))
+    weight = np.array([weights[group].sum() for group in groups])
+    mean = np.array([energies[group] @ weights[group] for group in groups])
+    keep = weight > 0
+    return mean[keep] / weight[keep], weight[keep]
 
 
 def damping_of(layers: tuple[Layer, ...], axis: Axis, array_axis: int) -> RealArray:

@@ -2,7 +2,6 @@
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
-from functools import cached_property
 
 import numpy as np
 
@@ -73,11 +72,10 @@ class Landscape:
             values[part.box] += part.drive.factor(time) * part.values
         return values
 
-    @cached_property
-    def lowest(self) -> float:
-        """A lower bound of V at all times [energy]."""
+    def lowest(self, until: float) -> float:
+        """Return a lower bound of V at all times up to one [energy]."""
         return float(self.static.min()) - sum(
-            part.drive.largest() * float(np.abs(part.values).max()) for part in self.driven
+            part.drive.largest(until) * float(np.abs(part.values).max()) for part in self.driven
         )
 
     def static_gradient(self, axis: int, rows: slice) -> RealArray:

@@ -168,8 +168,9 @@ class Setup:
     @cached_property
     def start(self) -> tuple[ComplexArray, float | None]:
         """The initial state, and the probability found where a packet was cut."""
+        differences = None if self.spectral else self.scenario.propagator.space_order or 2
         return initial_state(
-            self.scenario.packet, self.grid, self.particle, self.scenario.potential
+            self.scenario.packet, self.grid, self.particle, self.scenario.potential, differences
         )
 
     @cached_property
@@ -314,7 +315,7 @@ class Setup:
 
     def _choose(self, steps: int) -> Choices:
         strengths = tuple(self._strength(layer) for layer in self.bare_layers)
-        fastest = self.content.largest_kinetic(self.landscape.lowest)
+        fastest = self.content.largest_kinetic(self.landscape.lowest(self.scenario.time.end))
         reads = math.floor(
             math.pi * self.particle.hbar / (BAND_MARGIN * fastest * self.dt)
         ) if fastest > 0 else 1

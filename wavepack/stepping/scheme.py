@@ -118,6 +118,11 @@ class Stepper:
 
     def _kick(self, kick: Kick, step: int, *, twice: bool) -> None:
         time = step * self.dt
+        if self._blocks.single:
+            rows = self._blocks.slices[0]
+            self.tally.add(rows, twice=twice)
+            kick.apply(rows, time)
+            return
 
         def work(rows: slice) -> None:
             self.tally.add(rows, twice=twice)

@@ -53,6 +53,7 @@ class Tally:
         self._once = [np.zeros(shape) for shape in shapes]
         self._twice = [np.zeros(shape) for shape in shapes]
         cells = sum(int(np.prod(shape)) for shape in shapes)
+        self._losses = [self._loss(box) for box in self.boxes]
         self._buffers: list[ComplexArray] = []
         self._filled = 0
         if buffered and cells:
@@ -85,14 +86,12 @@ class Tally:
 
     def patches(self) -> list[Patch]:
         """Return the probability removed so far, box by box of absorbing cells."""
-        patches = []
-        for box, once, twice in zip(self.boxes, self._once, self._twice, strict=True):
-            keep = np.ones((1,) * len(box))
-            for i, factor in enumerate(self._factors):
-                keep = keep * self._grid.along(factor[box[i]] ** 2, i)
-            removed = (1 - keep) * once + (1 - keep**2) * twice
-            patches.append(Patch(box, removed * self._grid.cell))
-        return patches
+        return [
+            Patch(box, once * (loss * self._grid.cell) + twice * (fused * self._grid.cell))
+            for box, once, twice, (loss, fused) in zip(
+                self.boxes, self._once, self._twice, self._losses, strict=True
+            )
+        ]
 
     def save(self) -> dict[str, RealArray]:
         """Return all sums, to go on from later."""
@@ -105,6 +104,13 @@ class Tally:
         for i in range(len(self.boxes)):
             self._once[i][...] = saved[f"once/{i}"]
             self._twice[i][...] = saved[f"twice/{i}"]
+
+    def _loss(self, box: tuple[slice, ...]) -> tuple[RealArray, RealArray]:
+        """Return the share that one damping removes from each cell of a box, and a fused one."""
+        keep = np.ones((1,) * len(box))
+        for i, factor in enumerate(self._factors):
+            keep = keep * self._grid.along(factor[box[i]] ** 2, i)
+        return 1 - keep, 1 - keep**2
 
     def _keep(self) -> None:
         for box, buffer in zip(self.boxes, self._buffers, strict=True):
