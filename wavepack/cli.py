@@ -5,6 +5,7 @@ Results go to stdout, progress and messages to stderr.
 
 import json
 import os
+import shutil
 import signal
 import sys
 import traceback
@@ -87,13 +88,13 @@ def _explained(error: Exception) -> int:
 
 def _check(asked: Namespace) -> int:
     from wavepack.scenario.load import load_scenario
-    from wavepack.scenario.preflight import forecast
 
     scenario = load_scenario(asked.scenario, asked.overrides)
-    found = forecast(scenario, timing=not asked.no_timing)
-    _print(found.as_text())
-    missed = scenario.accuracy is not None and any(row.verdict == "bad" for row in found.rows)
-    return MISSED if missed else DONE
+    from wavepack import workflow
+
+    found = workflow.check(scenario, timing=not asked.no_timing)
+    _print(found.text(width=shutil.get_terminal_size((100, 24)).columns) + "\n")
+    return MISSED if found.misses_target else DONE
 
 
 def _run(asked: Namespace) -> int:
@@ -140,6 +141,8 @@ def _results(asked: Namespace) -> int:
         _print(tables.as_csv(found))
     else:
         _print(tables.as_text(found, bold=decorated(sys.stdout)))
+    if found.get("status") in {"running", "interrupted"}:
+        _say(f"not finished; if nothing works on it, `{PROGRAM} resume {asked.folder}` goes on")
     return DONE
 
 

@@ -14,7 +14,9 @@ from wavepack.archive.reader import open_run
 from wavepack.archive.results import jsonable, read_results
 from wavepack.errors import MachineError, UsageError
 from wavepack.running.session import News, Session, as_run
+from wavepack.scenario.build import Setup
 from wavepack.scenario.load import load_scenario
+from wavepack.scenario.preflight import Forecast, forecast
 from wavepack.scenario.schema import Scenario
 from wavepack.scenario.write import to_toml
 
@@ -32,6 +34,17 @@ Note = Callable[[str], None]
 RUNS: Final = Path("runs")
 MOVIE_FILE: Final = "movie.mp4"
 FIGURES: Final = "figures"
+
+
+def check(scenario: Scenario, *, timing: bool = True) -> Forecast:
+    """Forecast whether a scenario's numbers suit it and what the run will cost.
+
+    Raises
+    ------
+    ScenarioError
+        If the scenario cannot be made ready.
+    """
+    return forecast(Setup(scenario), timing=timing, folder=default_folder(scenario))
 
 
 def run(

@@ -141,6 +141,31 @@ def wait_for(happened: Callable[[], bool]) -> None:
         time.sleep(0.02)
 
 
+def test_results_of_a_run_at_work(copied: Path, call: Call) -> None:
+    """A run without an end has its status told, and how to go on."""
+    path = copied / RUN / "results.json"
+    path.write_text(path.read_text().replace('"finished"', '"running"', 1))
+    done = call("results", RUN, cwd=copied)
+    assert done.status == 0
+    assert "running at t =" in done.out
+    assert "not finished; if nothing works on it, `wavepack resume runs/wire`" in done.err
+
+
+def test_check_forecasts(finished: Path, call: Call) -> None:
+    """A forecast goes to stdout; only a missed target makes its status 3; no run is made."""
+    done = call("check", "wire.toml", "--no-timing", cwd=finished)
+    assert done.status == 0, done.err
+    assert "memory" in done.out
+    assert "duration" not in done.out
+    hard = call(
+        "check", "wire.toml", "--no-timing", "--set", "accuracy.target=1e-9", cwd=finished
+    )
+    assert hard.status == 3
+    faulty = call("check", "wire.toml", "--set", "grid.x.pionts=9", cwd=finished)
+    assert faulty.status == 2
+    assert "did you mean points?" in faulty.err
+
+
 def test_report_and_figures(copied: Path, call: Call) -> None:
     """The report embeds the figures, which also stand in figures/, and names its path."""
     done = call("report", RUN, cwd=copied)
