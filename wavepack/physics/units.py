@@ -304,8 +304,10 @@ def _float(value: float | Fraction) -> float:
         return math.inf
 
 
-def _factor(unit: str, dimension: str) -> Fraction:
+def _factor(unit: object, dimension: str) -> Fraction:
     table = TABLE[dimension]
+    if not isinstance(unit, str):
+        raise ValueError(f"need a unit of {dimension}, got {_shown(unit)}")
     if unit not in table:
         raise ValueError(f"need a unit of {dimension}, got {unit!r}{_nearest(unit, sorted(table))}")
     return table[unit]

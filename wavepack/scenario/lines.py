@@ -148,7 +148,9 @@ class LineMap:
             self._lines.setdefault(path, self._line)
 
 
-def syntax_line(error: ValueError) -> int | None:
-    """Return the line that a syntax error names in its message."""
+def syntax_line(error: ValueError, text: str) -> int | None:
+    """Return the line of a text that the parser's message names."""
     match = re.search(r"at line (\d+)", str(error))
-    return int(match[1]) if match else None
+    if match:
+        return int(match[1])
+    return text.count("\n", 0, len(text) - 1) + 1 if "end of document" in str(error) else None

@@ -95,7 +95,9 @@ def parse_scenario(
     except RecursionError:
         raise ScenarioError([Fault("", "not TOML: nested too deeply", None, file)]) from None
     except ValueError as error:
-        raise ScenarioError([Fault("", f"not TOML: {error}", syntax_line(error), file)]) from None
+        raise ScenarioError(
+            [Fault("", f"not TOML: {error}", syntax_line(error, text), file)]
+        ) from None
     overridden, faults = apply_overrides(raw, overrides)
     reader = Reader(file, lines, overridden, (folder or FilePath()).resolve(), UnitSystem())
     reader.faults += faults
@@ -160,6 +162,8 @@ def _draft(raw: dict[str, Any], reader: Reader) -> Draft:
     broken |= {key for key, items in lists.items() if UNREADABLE in items}
     if not grid or UNREADABLE in grid.values():
         broken.add("grid")
+    if "x" not in grid:
+        broken.add("axes")
     single |= {key: _STAND_INS[key] for key in broken & single.keys()}
     single["absorber"] = _spread(single["absorber"], reader.axes)
     axes = {name: AxisSpec() if axis is UNREADABLE else axis for name, axis in grid.items()}
@@ -188,7 +192,7 @@ def _units(raw: Any, reader: Reader) -> UnitSystem:  # noqa: ANN401 - any TOML v
             try:
                 UnitSystem(**{key: table[key]})
                 chosen[key] = table[key]
-            except (ValueError, TypeError) as error:
+            except ValueError as error:
                 reader.fault(("units", key), str(error))
     return UnitSystem(**chosen)
 

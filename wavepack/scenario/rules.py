@@ -38,7 +38,8 @@ class Draft:
     potential, packet, region, detector : sequence
         With `UNREADABLE` in the place of an item that could not be read.
     broken : set of str
-        Names of parts that could not be read whole.
+        Names of parts that could not be read whole; "axes" where not even the
+        names of the axes are known.
     """
 
     grid: Mapping[str, AxisSpec]
@@ -310,13 +311,13 @@ _RULES: Final[tuple[tuple[Callable[[Draft], Found], tuple[str, ...]], ...]] = (
     (_propagator, ("propagator",)),
     (_masses, ("propagator",)),
     (_drives, ()),
-    (_absorber, ("absorber",)),
+    (_absorber, ("absorber", "axes")),
     (_grid, ()),
-    (_places, ()),
+    (_places, ("axes",)),
     (_binding, ("potential",)),
     (_conditions, ()),
-    (_regions, ()),
-    (_detectors, ()),
+    (_regions, ("axes",)),
+    (_detectors, ("axes",)),
     (_time, ("grid", "time", "propagator")),
     (_output, ("output",)),
 )
