@@ -1,7 +1,5 @@
 """A small valid scenario on one axis and one on two."""
 
-import pytest
-
 LINE = """\
 title = "One barrier"
 
@@ -45,16 +43,4 @@ x = 30.0
 PLANE = LINE.replace(
     "points = 2048 }",
     'points = 256 }\ny = { from = -20.0, to = 20.0, points = 64, ends = "periodic" }',
-)
-
-
-@pytest.fixture
-def line() -> str:
-    """Return a valid scenario on one axis."""
-    return LINE
-
-
-@pytest.fixture
-def plane() -> str:
-    """Return a valid scenario on two axes."""
-    return PLANE
+).replace("center = -60.0", "center = { x = -60.0, y = 0.0 }")

@@ -137,7 +137,7 @@ def test_a_missing_table_has_no_line(old: str, new: str, key: str, part: str) ->
 @pytest.mark.parametrize(
     ("old", "new", "key", "part"),
     [
-        ("center = -60.0", "center = { x = -60.0 }", "packet.0.center.y", "need a value along y"),
+        (", y = 0.0 }", " }", "packet.0.center.y", "need a value along y"),
         ("points = 64, ", "points = 16_000_000, ", "grid", "points in all"),
         ('"periodic"', '["absorbing", "walls"]', "absorber.width", "narrower than the axis y"),
         ("x = 30.0", "x = 30.0\ny = 3.0", "detector.0", "need one plane"),

@@ -179,13 +179,16 @@ def _grid(draft: Draft) -> Found:
 
 def _places(draft: Draft) -> Found:
     for i, packet in draft.items("packet"):
-        if isinstance(packet, GaussianPacket | ChannelPacket):
-            for axis, value in packet.center.items():
-                if not _inside(draft.grid[axis], value):
-                    yield (
-                        ("packet", i, "center", axis),
-                        f"need a place on axis {axis} ({_extent(draft.grid[axis])}), got {value:g}",
-                    )
+        if not isinstance(packet, GaussianPacket | ChannelPacket):
+            continue
+        names = list(draft.grid)
+        if isinstance(packet, ChannelPacket):  # across its travel it fills the channel
+            names = names[packet.travel : packet.travel + 1]
+        for name in names:
+            value = packet.center[name]
+            if not _inside(draft.grid[name], value):
+                wanted = f"need a place on axis {name} ({_extent(draft.grid[name])})"
+                yield ("packet", i, "center", name), f"{wanted}, got {value:g}"
 
 
 def _binding(draft: Draft) -> Found:
