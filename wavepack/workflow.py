@@ -108,7 +108,7 @@ def resume(
     end = None if until is None else time_of(folder, until)
     if end is None and (found := ended(folder)) is not None:
         status = found["status"].replace("_", " ")
-        note(f"{folder}: this run is {status} already; --until takes it beyond its end")
+        note(f"{folder}: this run has come to its end ({status}); --until takes it beyond")
         return found
     with asked_to_stop() as asked, Session.resume(folder, until=end, threads=threads) as session:
         for text in session.notes:

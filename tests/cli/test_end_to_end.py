@@ -91,7 +91,7 @@ def test_finished_run_is_shown(finished: Path, call: Call) -> None:
     before = (finished / RUN / "run.h5").read_bytes()
     done = call("resume", RUN, cwd=finished)
     assert done.status == 0
-    assert "this run is finished already" in done.err
+    assert "this run has come to its end (finished)" in done.err
     assert done.out == (finished / "stdout.txt").read_text()
     assert (finished / RUN / "run.h5").read_bytes() == before
 

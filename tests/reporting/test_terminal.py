@@ -56,7 +56,7 @@ class News:
 def test_progress_tells_all() -> None:
     """Time, share, speed, time to go, norm and transmission stand in one line."""
     assert progress_text(News(), "fs") == (
-        "t = 300 of 1200 fs  25 %  75 steps/s  1:40 min left  norm 0.7500  transmission 0.1250"
+        "300 of 1200 fs  25 %  75 steps/s  1:40 min left  norm 0.7500  T 0.1250"
     )
 
 
@@ -65,6 +65,15 @@ def test_progress_at_the_first_step_has_no_speed() -> None:
     text = progress_text(News(step=0, first=0, seconds=0.0, standing=Standing(time=0.0)), "fs")
     assert "steps/s" not in text
     assert "0 %" in text
+
+
+def test_progress_fits_eighty_columns() -> None:
+    """Nothing is cut off a usual terminal, however long the run."""
+    news = News(10_000_000, 100_000_000, 0, 20_000.0, Standing(time=12345.678))
+    text = progress_text(news, "atomic_time")
+    assert text.startswith("12346 of 1.2346e+05 atomic_time  10 %  500 steps/s  50:00 h left")
+    assert len(text) < 90
+    assert len(progress_text(news, "fs")) < 80
 
 
 def test_redrawn_in_place_on_a_terminal(monkeypatch: pytest.MonkeyPatch) -> None:

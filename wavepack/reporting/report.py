@@ -44,7 +44,8 @@ h2 { font-size: 1.2rem; margin: 2.4rem 0 .6rem; color: var(--accent); overflow-w
 table { border-collapse: collapse; width: 100%; font-size: .95rem; }
 th, td { padding: .22rem .9rem .22rem 0; border-bottom: 1px solid var(--rule); text-align: left; }
 thead th { color: var(--faint); font-weight: 500; }
-tbody th { font-weight: 400; overflow-wrap: anywhere; }
+tbody th { font-weight: 400; overflow-wrap: break-word; max-width: 20rem; }
+.facts th { white-space: nowrap; } .facts td { overflow-wrap: anywhere; }
 .num { font-family: ui-monospace, monospace; font-size: .9rem; white-space: pre; }
 figure { margin: 1.2rem 0; }
 figure img { max-width: 100%; height: auto; background: #fff; border-radius: 4px; }
@@ -187,7 +188,7 @@ def _figure(content: bytes, caption: str) -> str:
 def _provenance(found: Mapping[str, Any]) -> Iterator[str]:
     if not found:
         return
-    yield '<h2>Provenance</h2><div class="scroll"><table><tbody>'
+    yield '<h2>Provenance</h2><div class="scroll"><table class="facts"><tbody>'
     for name, value in found.items():
         words = escape(name.replace("_", " "))
         yield f'<tr><th scope="row">{words}</th><td>{escape(_words(value))}</td></tr>'

@@ -70,7 +70,7 @@ def sections(results: Mapping[str, Any]) -> tuple[Section, ...]:
         Section(
             "Expectation values of what remains", _quantities(results.get("expectations", {}))
         ),
-        _numerics(results.get("numerics", {})),
+        _numerics(results.get("numerics", {}), with_detectors=bool(results.get("detectors"))),
     ]
     return tuple(section for section in found if section.rows or section.notes)
 
@@ -211,7 +211,7 @@ def _peak(kind: str, seen: Mapping[str, Any]) -> tuple[Row, ...]:
     return (_row(f"highest {kind} by energy", found), where)
 
 
-def _numerics(found: Mapping[str, Any]) -> Section:
+def _numerics(found: Mapping[str, Any], *, with_detectors: bool) -> Section:
     rows = [Row(f"points along {axis}", str(n)) for axis, n in found.get("points", {}).items()]
     for axis, spacing in found.get("spacing", {}).items():
         rows.append(_fact(f"spacing along {axis}", spacing))
@@ -220,7 +220,7 @@ def _numerics(found: Mapping[str, Any]) -> Section:
     for layer in found.get("absorbers") or ():
         rows.append(_fact(f"absorber at {layer['end']} {layer['axis']}", layer["strength"]))
     beyond = (found.get("detectors") or {}).get("probability_beyond_band")
-    if beyond is not None:
+    if beyond is not None and with_detectors:
         rows.append(Row("probability too fast for detectors", significant(beyond, 3)))
     return Section("Numerics", tuple(rows), tuple(_method(found)))
 

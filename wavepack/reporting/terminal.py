@@ -102,15 +102,15 @@ class Line:
 
 
 def progress_text(news: News, unit: str) -> str:
-    """Return time done, share, speed, time to go, norm left and transmission in one line."""
+    """Return time done, share, speed, time to go, norm left and transmission in 80 columns."""
     share = news.step / news.steps if news.steps else 1.0
     end = news.standing.time / share if share else 0.0
     parts = [
-        f"t = {news.standing.time:.5g} of {end:.5g} {unit}",
+        f"{news.standing.time:.5g} of {end:.5g} {unit}",
         f"{100 * share:.0f} %",
         *_pace(news),
         f"norm {news.standing.moments.norm:.4f}",
-        f"transmission {news.standing.transmission:.4f}",
+        f"T {news.standing.transmission:.4f}",
     ]
     return "  ".join(parts)
 
@@ -120,7 +120,8 @@ def _pace(news: News) -> tuple[str, ...]:
     if done <= 0 or news.seconds <= 0:
         return ()
     rate = done / news.seconds
-    return (f"{rate:.3g} steps/s", f"{duration((news.steps - news.step) / rate)} left")
+    speed = f"{rate:.0f}" if rate >= 100 else f"{rate:.3g}"
+    return (f"{speed} steps/s", f"{duration((news.steps - news.step) / rate)} left")
 
 
 def duration(seconds: float) -> str:
