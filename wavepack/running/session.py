@@ -203,7 +203,7 @@ class Session:
             writer.replace_scenario(to_toml(self.scenario))
         for note in self.notes:
             self._log.write("note", text=note)
-        self._log.write("resumed", step=record.step, time=record.step * setup.dt)
+        self._log.write("resumed", step=record.step, reached=record.step * setup.dt)
 
     def _extend(self, record: Record, until: float) -> Record:
         """Move the scenario's end, here and in the folder."""
@@ -272,7 +272,7 @@ class Session:
         state |= {f"tally/{key}": value for key, value in self._stepper.tally.save().items()}
         state |= {f"journal/{key}": value for key, value in journal.items()}
         checkpoint.save(self.folder / CHECKPOINT_FILE, state)
-        self._log.write("checkpoint", step=snapshot.step, time=snapshot.time)
+        self._log.write("checkpoint", step=snapshot.step, reached=snapshot.time)
 
     def _conclude(self, status: str, snapshot: Snapshot) -> dict[str, Any]:
         standing = self._journal.standing(snapshot)
@@ -292,7 +292,7 @@ class Session:
         self._began = time.monotonic()
         results = self._summary(status, standing)
         write_results(self.folder, results)
-        self._log.write(status, step=snapshot.step, time=snapshot.time)
+        self._log.write(status, step=snapshot.step, reached=snapshot.time)
         return results
 
     def _write_momentum(self, snapshot: Snapshot) -> None:
