@@ -98,6 +98,9 @@ _FUNCTIONS: Final[Mapping[str, tuple[int, Callable[..., Any]]]] = {
     "arctan2": (2, np.arctan2),
     "hypot": (2, np.hypot),
 }
+#: Names of the functions, in the order of the reference page.
+FUNCTIONS: Final = tuple(_FUNCTIONS)
+
 #: Functions that jump.
 _JUMPING: Final = frozenset({"where", "sign", "floor", "ceil", "round"})
 

@@ -74,6 +74,7 @@ class AbsorberSpec:
     width: Mapping[str, tuple[float, float]] = declare(
         "custom",
         "width of the layer at each absorbing end: one, a pair of ends, or either for each axis",
+        dimension="length",
         default={},
     )
     form: str = declare(
@@ -214,10 +215,16 @@ class DetectorSpec:
 
     name: str = declare("text", "its name; default: detector and its number", default="")
     x: float | Span | None = declare(
-        "custom", "plane x = at, or limits { from, to } of a plane y = at", default=None
+        "custom",
+        "plane x = at, or limits { from, to } of a plane y = at",
+        dimension="length",
+        default=None,
     )
     y: float | Span | None = declare(
-        "custom", "plane y = at, or limits { from, to } of a plane x = at", default=None
+        "custom",
+        "plane y = at, or limits { from, to } of a plane x = at",
+        dimension="length",
+        default=None,
     )
     toward: str | None = declare(
         "choice",
