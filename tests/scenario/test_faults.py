@@ -242,6 +242,20 @@ def test_files_that_cannot_be_read_are_refused(tmp_path: Path) -> None:
             load_scenario(path)
 
 
+def test_a_byte_order_mark_is_no_fault(tmp_path: Path) -> None:
+    """A file saved with a byte order mark is read like any other."""
+    path = tmp_path / "marked.toml"
+    path.write_text(LINE, encoding="utf-8-sig")
+    assert load_scenario(path) == parse_scenario(LINE)
+
+
+def test_a_long_value_is_cut_in_its_message() -> None:
+    """A fault quotes no more of a value than can be read."""
+    values = ", ".join(["1"] * 10_000)
+    for fault in faults_of(LINE, f"packet.direction=[{values}]", f"title=[{values}]"):
+        assert len(fault.message) <= 500
+
+
 def test_a_fault_reads_as_one_line() -> None:
     """The message has the form file:line: key: need, got."""
     fault = faults_of(LINE.replace("sigma = 8.0", "sigma = -8.0"))[0]

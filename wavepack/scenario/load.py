@@ -68,7 +68,7 @@ def load_scenario(path: FilePath | str, overrides: Sequence[str] = ()) -> Scenar
     try:
         if path.stat().st_size > LARGEST_FILE:
             raise UsageError(f"{path}: need a scenario of at most {LARGEST_FILE} bytes")
-        text = path.read_text(encoding="utf-8")
+        text = path.read_text(encoding="utf-8-sig")
     except OSError as error:
         raise UsageError(f"{path}: cannot be read: {error.strerror}") from error
     except ValueError as error:

@@ -17,6 +17,7 @@ from wavepack.scenario.lines import LineMap, Path
 
 NAME: Final = re.compile(r"[A-Za-z][A-Za-z0-9_-]*")
 MAX_SHOWN: Final = 60
+MOST_TOLD: Final = 500
 
 
 class _Unreadable:
@@ -54,8 +55,10 @@ class Reader:
         self.faults: list[Fault] = []
 
     def fault(self, path: Path, message: str) -> None:
-        """Note a fault at a key."""
+        """Note a fault at a key; a message that quotes a long value is cut."""
         key = dotted(path)
+        if len(message) > MOST_TOLD:
+            message = f"{message[: MOST_TOLD - 3]}..."
         text = self._override(path)
         if text is None:
             self.faults.append(Fault(key, message, self.lines.find(path), self.file))
