@@ -270,6 +270,7 @@ def test_nothing_but_arithmetic_gets_in(text: str) -> None:
         "sin(" * (DEEPEST + 1) + "x" + ")" * (DEEPEST + 1),
         "x" + "**x" * 400,
         "+".join("x" * 900),
+        "<".join("x" * 900),
         "9" * 1999,
         "1" + "0" * 400,
         "x**" + "9" * 400,
