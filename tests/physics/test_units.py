@@ -2,6 +2,7 @@
 
 import math
 import warnings
+from collections.abc import Callable
 from typing import Any
 
 import pytest
@@ -51,18 +52,39 @@ DEFAULT = UnitSystem()
 ATOMIC = UnitSystem.atomic()
 
 
-def test_every_unit_agrees_with_a_units_library() -> None:
-    """Each unit of the table has the SI value that pint gives it."""
+@pytest.fixture(scope="module")
+def si_value() -> Callable[[str, str], float]:
+    """Return a function that gives the SI value a units library has for a unit."""
     with warnings.catch_warnings():
         warnings.simplefilter("ignore")
         import pint  # noqa: PLC0415 - slow to import
 
         registry: Any = pint.UnitRegistry()
+    return lambda unit, si: float(registry(f"1 {unit}").to(si).magnitude)
+
+
+def test_every_unit_agrees_with_a_units_library(si_value: Callable[[str, str], float]) -> None:
+    """Each unit of the table has the SI value that pint gives it."""
     for dimension, si in SI.items():
         for name, factor in TABLE[dimension].items():
-            value = registry(f"1 {PINT_NAMES.get(name, name)}").to(si).magnitude
+            value = si_value(PINT_NAMES.get(name, name), si)
+            # The ratio: an approximate comparison of values near 1e-20 would pass anything.
             # Later adjustments of the constants moved them by parts in 1e9.
-            assert float(factor) == pytest.approx(value, rel=2e-9), (dimension, name)
+            assert float(factor) / value == pytest.approx(1.0, rel=2e-9), (dimension, name)
+
+
+def test_derived_units_agree_with_a_units_library(si_value: Callable[[str, str], float]) -> None:
+    """Fields and wave numbers too, in every spelling."""
+    lengths = {name: si_value(PINT_NAMES.get(name, name), "m") for name in TABLE["length"]}
+    for name, length in lengths.items():
+        for spelling in (f"1/{name}", f"{name}^-1", f"/{name}"):
+            found = float(TABLE["wavenumber"][spelling]) * length
+            assert found == pytest.approx(1.0, rel=2e-9), spelling
+        for volts in ("mV", "V", "kV", "MV", "GV"):
+            found = float(TABLE["field"][f"{volts}/{name}"]) * length / si_value(volts, "V")
+            assert found == pytest.approx(1.0, rel=2e-9), (volts, name)
+    hartree = float(TABLE["field"]["Hartree/(e bohr)"])
+    assert hartree / si_value("hartree/elementary_charge/bohr", "V/m") == pytest.approx(1, rel=2e-9)
 
 
 @pytest.mark.parametrize(
