@@ -23,12 +23,10 @@ from wavepack.physics.absorbers import Layer, reflection, suited_strength
 from wavepack.physics.kinetic import StaggeredKinetic
 from wavepack.physics.packets import ChannelPacket, GaussianPacket, launch
 from wavepack.scenario.build import Setup
+from wavepack.scenario.slices import Line, gathered, nearest
 
-#: Energies of a packet that are told apart.
-ENERGIES: Final = 160
+#: Energies towards a layer that are told apart.
 LAYER_ENERGIES: Final = 48
-#: Slices a spacing for a potential with sharp edges.
-SLICES: Final = 4
 #: A Gaussian has about 1e-9 of its probability beyond this many standard deviations.
 TAIL: Final = 6.0
 #: Energies that are given back by more than this share count as not absorbed.
@@ -49,8 +47,8 @@ class LayerForecast:
     layer : Layer
         The layer.
     mean, worst : float
-        Share given back: averaged over the energies expected, and the worst of
-        those with more than 1e-4 of the largest weight.
+        Share given back: averaged over the energies that arrive before the end,
+        and the worst of those with more than 1e-4 of the largest weight.
     slow : float
         Weight of energies that are given back by more than a tenth.
     kinetic : float
@@ -96,7 +94,7 @@ class Estimates:
     def gain(self) -> float:
         """Kinetic energy [energy] that the deepest well and the drives can add."""
         content = self.setup.content
-        gain = max(content.launch - self.setup.landscape.lowest, 0.0)
+        gain = max(content.launch - self.setup.landscape.lowest(self.end), 0.0)
         return gain + 10 * max(content.photons, default=0.0)
 
     @cached_property
@@ -117,6 +115,17 @@ class Estimates:
     @cached_property
     def travel(self) -> tuple[int, float]:
         """The axis along which the packet moves most, and +1 or -1."""
+        axis = int(np.argmax(np.abs(self._means)))
+        return axis, math.copysign(1.0, self._means[axis])
+
+    @property
+    def _drift(self) -> float:
+        """Largest mean momentum along an axis, without sign [1/length]."""
+        return max(abs(mean) for mean in self._means)
+
+    @cached_property
+    def _means(self) -> list[float]:
+        """Mean momentum along each axis [1/length]."""
         means = []
         for axis in range(self.setup.grid.ndim):
             k, density = momentum_density(self.setup.start[0], self.setup.grid, axis)
@@ -124,8 +133,7 @@ class Estimates:
             if self.setup.grid.axes[axis].basis == "sine":
                 mean = self._current(axis)
             means.append(mean)
-        axis = int(np.argmax(np.abs(means)))
-        return axis, math.copysign(1.0, means[axis])
+        return means
 
     @cached_property
     def grid_energy(self) -> float:
@@ -133,23 +141,54 @@ class Estimates:
         return self.c * sum(axis.largest_wavenumber**2 for axis in self.setup.grid.axes)
 
     @cached_property
+    def edged(self) -> tuple[bool, ...]:
+        """For each axis whether V jumps along it, as far as known."""
+        pieces = [piece for piece in self.setup.scenario.potential if piece.acts != "before"]
+        return tuple(
+            any(piece.sharp and (piece.cell_sampled or piece.edges(i)) for piece in pieces)
+            for i in range(self.setup.grid.ndim)
+        )
+
+    @cached_property
+    def fastest_kicked(self) -> float:
+        """Largest kinetic energy [energy] that edges can kick to: along one of their axes.
+
+        Without edges that of the whole grid.
+        """
+        axes = [a for a, edged in zip(self.setup.grid.axes, self.edged, strict=True) if edged]
+        if not axes:
+            return self.grid_energy
+        return self.c * max(axis.largest_wavenumber for axis in axes) ** 2
+
+    @cached_property
     def phase(self) -> float:
-        r"""Phase per step of the fastest wave of the grid, :math:`E dt/\hbar`."""
-        return self.setup.dt * self.grid_energy / self.hbar
+        r"""Phase per step, :math:`E dt/\hbar`, of the fastest wave that edges can kick to."""
+        return self.setup.dt * self.fastest_kicked / self.hbar
 
     @cached_property
     def own_phase(self) -> float:
-        r"""Phase per step of the fastest part of the packet, :math:`E dt/\hbar`."""
-        return self.setup.dt * self.largest_energy / self.hbar
+        r"""Phase per step of all but 1e-4 of the packet, :math:`E dt/\hbar`."""
+        content = self.setup.content
+        fast = sum(content.slowest(i, 1 - 1e-4) ** 2 for i in range(self.setup.grid.ndim))
+        return self.setup.dt * (self.c * fast + self.gain) / self.hbar
+
+    @cached_property
+    def uniform(self) -> bool:
+        """Whether V is the same everywhere and always: every step is then exact."""
+        return float(np.ptp(self._reached)) == 0.0
+
+    def near_limit(self, axis: int) -> float:
+        """Return the share of the packet in the last tenth of the grid's wave numbers."""
+        limit = self.setup.grid.axes[axis].largest_wavenumber
+        k, w = self.setup.content.wavenumbers[axis], self.setup.content.weights[axis]
+        return float(w[k > 0.9 * limit].sum())
 
     @cached_property
     def jump(self) -> tuple[float, ...]:
         """Largest jump of V [energy] at a sharp edge, along each axis."""
-        if not self.setup.landscape.sharp:
-            return (0.0,) * self.setup.grid.ndim
         return tuple(
-            self._largest(np.abs(_apart(self._reached, axis, 5)))
-            for axis in range(self.setup.grid.ndim)
+            self._largest(np.abs(_apart(self._reached, axis, 5))) if edged else 0.0
+            for axis, edged in enumerate(self.edged)
         )
 
     @cached_property
@@ -162,7 +201,7 @@ class Estimates:
         with f the spectrum of the smoothed edge. Zero for smooth potentials,
         for steps below resonance and for implicit steps.
         """
-        if not self.setup.spectral or not self.setup.landscape.sharp:
+        if not self.setup.spectral or not any(self.edged):
             return 0.0
         quantum = 2 * math.pi * self.hbar / self.setup.dt
         total = 0.0
@@ -192,6 +231,11 @@ class Estimates:
         oscillation = 2 * self.c / self.hbar**2 * fastest * self.setup.dt**2
         return second * min(1.0, ORDER_4_SHARE * oscillation)
 
+    @property
+    def second_order(self) -> float:
+        """Error of a probability from the step of a split of order 2, resonance apart."""
+        return self._split_error
+
     @cached_property
     def spacing_error(self) -> float:
         """Error of a probability from the spacing: smoothed edges, differences."""
@@ -210,6 +254,20 @@ class Estimates:
     def layers(self) -> tuple[LayerForecast, ...]:
         """What each absorbing layer gives back."""
         return tuple(self._layer(layer) for layer in self.setup.hamiltonian.layers)
+
+    @cached_property
+    def start_in_layers(self) -> float:
+        """Probability that starts inside the absorbers."""
+        density = np.abs(self.setup.start[0]) ** 2 * self.setup.grid.cell
+        free = np.ones([1] * self.setup.grid.ndim)
+        for i, axis in enumerate(self.setup.grid.axes):
+            x = axis.coordinates
+            outside = np.ones(axis.points)
+            for layer in self.setup.bare_layers:
+                if layer.axis == i:
+                    outside[(x >= layer.start) & (x <= layer.stop)] = 0.0
+            free = free * self.setup.grid.along(outside, i)
+        return float(np.sum(density * (1 - free)))
 
     def wide_enough(self, forecast: LayerForecast, goal: float) -> float | None:
         """Return a width [length] at which a layer gives back less than a goal."""
@@ -242,6 +300,11 @@ class Estimates:
         return float(np.max(np.ptp(values, axis=0), where=reached, initial=0.0))
 
     @cached_property
+    def resting(self) -> bool:
+        """Whether the packet has no direction: what it does next is not in its momenta."""
+        return self._drift**2 < 0.1 * self.central**2
+
+    @cached_property
     def slow_share(self) -> tuple[float, float]:
         """Share of the packet too slow to leave by the end, and the time it would take [time].
 
@@ -250,14 +313,19 @@ class Estimates:
         """
         axis, sign = self.travel
         line = self.setup.grid.axes[axis]
-        if "absorbing" not in line.ends:
+        if "absorbing" not in line.ends or self.resting:
             return 0.0, 0.0
         path = self._path(axis, sign)
         speed = 2 * self.c / self.hbar
         k, w = self.setup.content.wavenumbers[axis], self.setup.content.weights[axis]
-        slow = float(w[k < path / (speed * self.setup.scenario.time.end)].sum())
+        slow = float(w[k < path / (speed * self.end)].sum())
         slowest = max(self.setup.content.slowest(axis), 1e-6 * self.central)
         return slow, path / (speed * slowest)
+
+    @property
+    def end(self) -> float:
+        """When the run ends [time]."""
+        return self.setup.dt * self.setup.steps
 
     def _current(self, axis: int) -> float:
         """Mean momentum along an axis of standing waves [1/length]."""
@@ -274,7 +342,7 @@ class Estimates:
         behind = line.length - ahead
         ends = line.ends if sign > 0 else line.ends[::-1]
         along = np.moveaxis(self.setup.landscape.static, axis, 0).reshape(line.points, -1)
-        changed = np.abs(along - along[_nearest(line.coordinates, centre)]).max(axis=1)
+        changed = np.abs(along - along[nearest(line.coordinates, centre)]).max(axis=1)
         forward = sign * (line.coordinates - centre)
         met = forward[(changed > 1e-3 * self.setup.content.kinetic) & (forward > 0)]
         back = (2 * float(met.min()) if met.size else math.inf) + behind
@@ -288,34 +356,49 @@ class Estimates:
 
     def _towards(self, layer: Layer) -> tuple[RealArray, RealArray]:
         inner = layer.start if layer.upper else layer.stop
-        energies, weights = self.setup.content.towards(layer.axis, self.setup.landscape, inner)
-        return gathered(energies, weights, LAYER_ENERGIES)
+        content = self.setup.content
+        energies, weights = content.towards(layer.axis, self.setup.landscape, inner)
+        # Half the way: what scatters to it may start from nearer than the packet does.
+        way = abs(inner - content.centre[layer.axis]) / 2
+        speeds = 2 * np.sqrt(self.c * np.maximum(energies, 0.0)) / self.hbar
+        arrives = speeds * self.end > way
+        if not arrives.any():
+            return energies[-1:], np.zeros(1)
+        share = float(weights[arrives].sum())
+        energies, weights = gathered(energies[arrives], weights[arrives], LAYER_ENERGIES)
+        return energies, share * weights
 
     def _layer(self, layer: Layer) -> LayerForecast:
         energies, weights = self._towards(layer)
         back = reflection(layer, energies, self.c, closed=self._closed(layer))
         present = weights > 1e-4 * weights.max()
+        worst = float(back[present].max()) if present.any() else 0.0
+        total = max(float(weights.sum()), 1e-300)
         return LayerForecast(
-            layer, float(back @ weights), float(back[present].max()),
-            float(weights[back > GIVEN_BACK].sum()), float(energies @ weights),
+            layer, float(back @ weights), worst,
+            float(weights[back > GIVEN_BACK].sum()), float(energies @ weights) / total,
         )
 
     @cached_property
     def _reached(self) -> RealArray:
-        """V that acts at any time [energy], cut off where the packet cannot get."""
+        """V that acts at any time [energy], cut off at twice the mean kinetic energy.
+
+        What stands higher acts as a wall: how high no longer matters (measured on a
+        screen with apertures, ten times as high).
+        """
         values = self.setup.landscape.static
         if self.setup.landscape.driven:
             values = values.copy()
             for part in self.setup.landscape.driven:
-                values[part.box] += part.drive.largest() * part.values
-        highest = self.setup.content.launch + 3 * self.largest_energy
+                values[part.box] += part.drive.largest(self.end) * part.values
+        highest = self.setup.content.launch + 2 * self.setup.content.kinetic
         return np.minimum(values, highest)
 
     def _largest(self, values: RealArray) -> float:
         return float(values.max()) if values.size else 0.0
 
     @cached_property
-    def _line(self) -> "Line | None":
+    def _line(self) -> Line | None:
         """The line of a static potential in one dimension, else None."""
         if self.setup.grid.ndim > 1 or self.setup.landscape.driven:
             return None
@@ -326,7 +409,7 @@ class Estimates:
 
     @cached_property
     def _split_error(self) -> float:
-        r"""First order of the split: :math:`dt^2 \int V'^2 dx / 48\hbar^2 k`, or both ways in 1D."""
+        r"""Error of the split to first order, :math:`dt^2 \int V'^2 dx / 48\hbar^2 k`."""
         if self._line is not None:
             return self._line.compare(self._line.static, self._line.split(self.setup.dt))
         worst = 0.0
@@ -362,121 +445,7 @@ class Estimates:
         """|dT/d ln E|, averaged over the packet; 1 where it is not known."""
         if self._line is not None:
             return self._line.sensitivity
-        return 1.0 if float(np.ptp(self._reached)) > 0 else 0.0
-
-
-class Line:
-    """Transmission of a packet through a potential on a line, by slices of constant V.
-
-    Parameters
-    ----------
-    setup : Setup
-        On one axis, static.
-    sign : float
-        +1 or -1: where the packet moves.
-    """
-
-    def __init__(self, setup: Setup, sign: float) -> None:
-        self._setup = setup
-        self._sign = int(sign)
-        self._axis = setup.grid.axes[0]
-        self._c = setup.particle.stiffness
-        k, w = setup.content.wavenumbers[0], setup.content.weights[0]
-        self._energies, self._weights = gathered(self._c * k**2, w, ENERGIES)
-        self.static = self._ahead(setup.landscape.static)
-
-    def split(self, dt: float) -> RealArray:
-        """Return the potential that a symmetric split moves in [energy]."""
-        slope = np.gradient(self._setup.landscape.static, self._axis.spacing)
-        shift = dt**2 * self._c / (12 * self._setup.particle.hbar**2) * slope**2
-        return self._ahead(self._setup.landscape.static - shift)
-
-    @cached_property
-    def edges_smoothed(self) -> RealArray:
-        """V as on the grid, on finer slices [energy]."""
-        return self._finer(self._axis.spacing)
-
-    @cached_property
-    def edges_sharp(self) -> RealArray:
-        """V with sharp edges, on finer slices [energy]."""
-        if not self._setup.landscape.sharp:
-            return self.edges_smoothed
-        return self._finer(self._axis.spacing / SLICES)
-
-    def compare(self, one: RealArray, other: RealArray) -> float:
-        """Return by how much the packet's transmission differs between two potentials."""
-        if one is other or np.array_equal(one, other):
-            return 0.0
-        thickness = self._axis.spacing * len(self.static) / len(one)
-        a, b = (self._transmission(v, thickness, self._energies) for v in (one, other))
-        return float(abs((a - b) @ self._weights))
-
-    @cached_property
-    def sensitivity(self) -> float:
-        """|dT/d ln E|, averaged over the packet."""
-        a, b = (
-            self._transmission(self.static, self._axis.spacing, self._energies * factor)
-            for factor in (0.99, 1.01)
-        )
-        return float(np.abs(b - a) @ self._weights) / 0.02
-
-    def _ahead(self, values: RealArray) -> RealArray:
-        """Return the part of V between the packet's centre and the end it moves to."""
-        here = _nearest(self._axis.coordinates, self._setup.content.centre[0])
-        return values[here:] if self._sign > 0 else values[here::-1]
-
-    def _finer(self, width: float) -> RealArray:
-        """Return V on `SLICES` slices a spacing with its edges smoothed to a width."""
-        fine = self._axis.spacing / SLICES
-        x = self._axis.coordinates[0] + fine * np.arange(self._axis.points * SLICES)
-        total = np.zeros(x.size)
-        for piece in self._setup.landscape.static_pieces:
-            total += piece.evaluate((x,), (width,), self._setup.particle)
-        here = SLICES * _nearest(self._axis.coordinates, self._setup.content.centre[0])
-        return total[here:] if self._sign > 0 else total[here::-1]
-
-    def _transmission(
-        self, values: RealArray, thickness: float, kinetic: RealArray
-    ) -> RealArray:
-        """Return T at kinetic energies of the launch, from the first slice to the last."""
-        energy = kinetic + values[0]
-        k = np.sqrt((energy[:, None] - _trimmed(values)) / self._c + 0j)
-        k[np.abs(k) < 1e-9] = 1e-9
-        cos, sin = np.cos(k * thickness), np.sin(k * thickness)
-        inside, beyond = k[:, 0], k[:, -1]
-        psi, slope = np.ones(energy.size, dtype=complex), 1j * beyond
-        size = np.zeros(energy.size)
-        for i in range(k.shape[1] - 2, 0, -1):
-            q, c, s = k[:, i], cos[:, i], sin[:, i]
-            psi, slope = c * psi - s / q * slope, q * s * psi + c * slope
-            if i % 32 == 0:
-                scale = np.abs(psi) + np.abs(slope)
-                psi, slope = psi / scale, slope / scale
-                size += np.log(scale)
-        incoming = (psi + slope / (1j * inside)) / 2
-        flux = np.where(beyond.imag == 0, (beyond / inside).real, 0.0)
-        with np.errstate(under="ignore"):
-            return np.asarray(flux * np.exp(-2 * size) / np.abs(incoming) ** 2)
-
-
-def gathered(energies: RealArray, weights: RealArray, count: int) -> tuple[RealArray, RealArray]:
-    """Gather weighted energies into at most a number of them; weights add to one."""
-    if energies.size <= count:
-        return energies, weights / weights.sum()
-    root = np.sqrt(np.maximum(energies, 0.0))
-    edges = np.linspace(root.min(), root.max(), count + 1)
-    weight, _ = np.histogram(root, edges, weights=weights)
-    first, _ = np.histogram(root, edges, weights=weights * energies)
-    keep = weight > 0
-    return first[keep] / weight[keep], weight[keep] / weight.sum()
-
-
-def _trimmed(values: RealArray) -> RealArray:
-    """Drop what is constant at both ends but for one slice each."""
-    differs = np.flatnonzero(np.abs(np.diff(values)) > 1e-14 * max(np.ptp(values), 1e-300))
-    if not differs.size:
-        return np.repeat(values[:1], 3)
-    return values[differs[0] : differs[-1] + 2]
+        return 0.0 if self.uniform else 1.0
 
 
 def _apart(values: RealArray, axis: int, steps: int) -> RealArray:
@@ -487,7 +456,3 @@ def _apart(values: RealArray, axis: int, steps: int) -> RealArray:
 
 def _curvature(values: RealArray, axis: int) -> RealArray:
     return np.diff(values, n=2, axis=axis)
-
-
-def _nearest(coordinates: RealArray, position: float) -> int:
-    return int(np.argmin(np.abs(coordinates - position)))
