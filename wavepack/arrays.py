@@ -1,4 +1,4 @@
-"""The two array types that every room speaks."""
+"""The array types that every room speaks."""
 
 from typing import TypeAlias
 
@@ -7,3 +7,5 @@ import numpy.typing as npt
 
 RealArray: TypeAlias = npt.NDArray[np.float64]
 ComplexArray: TypeAlias = npt.NDArray[np.complex128]
+IndexArray: TypeAlias = npt.NDArray[np.intp]
+Mask: TypeAlias = npt.NDArray[np.bool_]

@@ -58,7 +58,7 @@ class MachineError(WavepackError):
     exit_status = 4
 
 
-class NumericalFault(WavepackError):
+class NumericalFault(WavepackError):  # noqa: N818 - the word users read
     """The numbers cannot be trusted from here on; the run stops."""
 
     exit_status = 5

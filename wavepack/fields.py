@@ -56,7 +56,13 @@ class Span:
     upper: float = math.inf
 
 
-def declare(kind: str, doc: str, *, default: Any = REQUIRED, **bounds: Any) -> Any:
+def declare(  # a field of any type, as in `dataclasses.field`
+    kind: str,
+    doc: str,
+    *,
+    default: Any = REQUIRED,  # noqa: ANN401
+    **bounds: Any,  # noqa: ANN401
+) -> Any:  # noqa: ANN401
     """Declare a dataclass field of a given kind; see `Spec` for the bounds.
 
     Raises

@@ -13,7 +13,7 @@ ENDS: list[tuple[End, End]] = [("periodic", "periodic"), ("walls", "absorbing")]
 
 
 def packet(x: np.ndarray) -> ComplexArray:
-    """A Gaussian with a momentum, far from both ends."""
+    """Return a Gaussian with a momentum, far from both ends."""
     return np.exp(-((x - 0.5) ** 2) / 0.3 + 2j * x)
 
 

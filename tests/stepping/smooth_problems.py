@@ -1,5 +1,7 @@
 """Smooth problems in natural units (hbar = m = 1) with nothing absorbing."""
 
+from itertools import pairwise
+
 import numpy as np
 
 from wavepack.arrays import ComplexArray
@@ -85,7 +87,7 @@ def final_state(setup: Setup, stops: int = 1) -> ComplexArray:
     stepper = setup.bind(threads=1)
     stepper.psi[...] = setup.start[0]
     marks = [round(i * setup.steps / stops) for i in range(stops + 1)]
-    for first, last in zip(marks, marks[1:], strict=False):
+    for first, last in pairwise(marks):
         stepper.advance(first, last)
     return np.array(stepper.psi)
 

@@ -21,8 +21,8 @@ def test_solutions_fulfil_the_system(width: int, *, corners: bool) -> None:
                 dense[i, (i + offset) % n] = rng.normal() + 1j * rng.normal()
     dense += 5 * np.eye(n)
     factor = BandedFactor(scipy.sparse.csr_array(dense), width)
-    one = rng.normal(size=n) + 0j
-    many = rng.normal(size=(n, 4)) + 1j
+    one = rng.normal(size=n).astype(complex)
+    many = rng.normal(size=(n, 4)).astype(complex) + 1j
     kept = many.copy()
     assert np.abs(dense @ factor.solve(one) - one).max() < 10 * TRANSFORM
     assert np.abs(dense @ factor.solve(many) - many).max() < 10 * TRANSFORM

@@ -1,1 +1,1 @@
-
+"""The results of a run as plain values."""

@@ -62,7 +62,7 @@ class Axis:
     def coordinates(self) -> RealArray:
         """Positions of the points, shape (points,)."""
         first = 1 if self.basis == "sine" else 0
-        return self.start + self.spacing * np.arange(first, first + self.points)
+        return self.start + self.spacing * np.arange(first, first + self.points, dtype=float)
 
     @cached_property
     def wavenumbers(self) -> RealArray:
@@ -72,8 +72,8 @@ class Axis:
         :math:`\pi (j+1)/L`.
         """
         if self.basis == "sine":
-            return math.pi / self.length * np.arange(1, self.points + 1)
-        return 2 * math.pi * np.fft.fftfreq(self.points, self.spacing)
+            return math.pi / self.length * np.arange(1, self.points + 1, dtype=float)
+        return np.asarray(2 * math.pi * np.fft.fftfreq(self.points, self.spacing))
 
     @property
     def largest_wavenumber(self) -> float:

@@ -187,7 +187,7 @@ def planner_version() -> str:
     return f"pyfftw {_fftw().__version__}"
 
 
-def _fftw() -> Any:
+def _fftw() -> Any:  # noqa: ANN401 - a module without type information
     """Import pyfftw without its drop-in interfaces, which take a second to load."""
     if "pyfftw" in sys.modules:
         return sys.modules["pyfftw"]

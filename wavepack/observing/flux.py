@@ -188,7 +188,7 @@ class FluxDetector:
         if self.spectrum is None or self._filled == 0:
             return np.zeros_like(self._sums)
         block = self._buffer[: self._filled].reshape(self._filled, -1)
-        part = self._turns[:, : self._filled] @ block
+        part: ComplexArray = self._turns[:, : self._filled] @ block
         part *= (self._every * self._dt) * np.exp(1j * self.spectrum.angle * self._start)[:, None]
         return part.reshape(self._sums.shape)
 

@@ -78,7 +78,8 @@ class Launch:
         static = np.moveaxis(hamiltonian.landscape.static, axis, 0).reshape(line.points, -1)
         across = _support(np.sum(np.abs(lines) ** 2, axis=0))
         self._across = static[self._centre]
-        kinetic = max(hamiltonian.kinetic.apply(psi).ravel().conj() @ psi.ravel(), 0).real
+        kinetic = float((hamiltonian.kinetic.apply(psi).ravel().conj() @ psi.ravel()).real)
+        kinetic = max(kinetic, 0.0)
         kinetic *= grid.cell / grid.norm(psi)
         density = np.abs(lines[support, across]) ** 2
         change = np.abs(static[support, across] - self._across[across])
@@ -108,8 +109,9 @@ class Launch:
         if variation > UNIFORM * kinetic:
             name = self._hamiltonian.grid.names[self._axis]
             return (
-                f"the potential is not uniform along {name} where the packet starts: on average it "
-                f"differs from that at the centre by {variation / kinetic:.2%} of the kinetic energy"
+                f"the potential is not uniform along {name} where the packet starts: on average "
+                f"it differs from that at the centre by {variation / kinetic:.2%} of the kinetic "
+                "energy"
             )
         return None
 

@@ -101,13 +101,13 @@ def _densities(
         density *= grid.cell
         sums += book.sums((rows, *whole), density)
         potential += float(np.vdot(landscape.static[rows], density))
-        for axis, marginal in enumerate(marginals):
+        for axis in range(grid.ndim):
             others = tuple(i for i in range(grid.ndim) if i != axis)
             along = density.sum(axis=others)
             if axis == 0:
-                marginal[rows] = along
+                marginals[axis][rows] = along
             else:
-                marginal += along
+                marginals[axis] += along
     for part in landscape.driven:
         inside = psi[part.box]
         weight = float(np.sum(part.values * (np.square(inside.real) + np.square(inside.imag))))

@@ -2,14 +2,14 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
-from typing import Final, Literal, Protocol
+from typing import Final, Literal, Protocol, TypeAlias
 
 import numpy as np
 
 from wavepack.arrays import RealArray
 from wavepack.grid.grid import Grid
 
-Role = Literal["transmitted", "reflected", "none"]
+Role: TypeAlias = Literal["transmitted", "reflected", "none"]
 
 #: The parts whose sum is the balance: each is added up on its own.
 PARTS: Final = ("transmitted", "reflected", "neither")
@@ -21,8 +21,13 @@ KEPT_POINTS: Final = 1 << 16
 class Cells(Protocol):
     """A box of cells and a probability in each."""
 
-    box: tuple[slice, ...]
-    removed: RealArray
+    @property
+    def box(self) -> tuple[slice, ...]:
+        """Where they are."""
+
+    @property
+    def removed(self) -> RealArray:
+        """The probability, shape of the box."""
 
 
 @dataclass(frozen=True)

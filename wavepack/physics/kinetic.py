@@ -14,7 +14,7 @@ import numpy as np
 import scipy.sparse
 import scipy.special
 
-from wavepack.arrays import ComplexArray, RealArray
+from wavepack.arrays import ComplexArray, IndexArray, RealArray
 from wavepack.grid import spectral
 from wavepack.grid.axis import Axis
 from wavepack.grid.grid import Grid
@@ -279,7 +279,7 @@ class StaggeredKinetic:
                     weights[j, m] = factor * self._weigh(axis, links, product[links])
         return weights
 
-    def _weigh(self, axis: int, links: RealArray, product: RealArray) -> float | RealArray:
+    def _weigh(self, axis: int, links: IndexArray, product: RealArray) -> float | RealArray:
         """Sum S_lj S_lm c_l over links; an array across the plane if the mass varies."""
         stiffness = self.stiffness(axis)
         if isinstance(stiffness, float):

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from wavepack.arrays import RealArray
+from wavepack.arrays import Mask, RealArray
 from wavepack.grid.grid import Grid
 from wavepack.physics.drives import Drive
 from wavepack.physics.particle import Particle
@@ -111,7 +111,7 @@ class Landscape:
         return DrivenPart(piece, drive, box, values[box].copy())
 
 
-def _box(mask: RealArray) -> tuple[slice, ...]:
+def _box(mask: Mask) -> tuple[slice, ...]:
     """Return the smallest box that holds every true cell."""
     box = []
     for axis in range(mask.ndim):

@@ -6,8 +6,8 @@ from typing import Any
 
 import numpy as np
 
-from wavepack.arrays import ComplexArray
 from wavepack.archive.writer import RunWriter
+from wavepack.arrays import ComplexArray
 from wavepack.errors import NumericalFault
 from wavepack.observing.flux import FluxDetector, Overlap
 from wavepack.observing.moments import Moments, moments

@@ -1,6 +1,5 @@
 """What the archive is told about a run before it starts."""
 
-import json
 from typing import Any
 
 from wavepack import __version__
@@ -87,4 +86,4 @@ def _extent(spec: Any) -> dict[str, Any]:  # noqa: ANN401 - a region or a detect
         for name, span in spec.spans.items()
     }
     where = getattr(spec, "where", None)
-    return json.loads(json.dumps({"spans": spans, "where": None if where is None else str(where)}))
+    return {"spans": spans, "where": None if where is None else str(where)}

@@ -6,6 +6,7 @@ from collections.abc import Callable
 from contextlib import ExitStack
 from dataclasses import dataclass, replace
 from pathlib import Path
+from types import TracebackType
 from typing import Any, Final, Self
 
 from wavepack import __version__
@@ -21,11 +22,11 @@ from wavepack.grid import spectral
 from wavepack.observing.flux import Overlap
 from wavepack.observing.moments import momentum_density
 from wavepack.running.journal import Journal, Standing
-from wavepack.running.planner import given_knowledge, shared_knowledge
 from wavepack.running.plan import run_plan
+from wavepack.running.planner import given_knowledge, shared_knowledge
 from wavepack.running.state import Record
 from wavepack.running.summary import summarise
-from wavepack.scenario.build import Setup
+from wavepack.scenario.build import Setup, given
 from wavepack.scenario.load import load_scenario
 from wavepack.scenario.schema import Scenario
 from wavepack.scenario.write import to_toml
@@ -150,7 +151,13 @@ class Session:
     def __enter__(self) -> Self:
         return self
 
-    def __exit__(self, kind: Any, error: Any, trace: Any) -> None:  # noqa: ANN401 - as contextlib has it
+    def __exit__(
+        self,
+        kind: type[BaseException] | None,
+        error: BaseException | None,
+        trace: TracebackType | None,
+    ) -> None:
+        del kind, trace
         if error is not None:
             self._writer.abandon()
         self._resources.close()
@@ -216,7 +223,7 @@ class Session:
                 "give a later time"
             )
         steps = max(record.step, -int(-(until / dt * (1 - 1e-12)) // 1))
-        former = self.scenario.time.end
+        former = given(self.scenario.time.end, "time.end")
         self.scenario = replace(self.scenario, time=replace(self.scenario.time, end=steps * dt))
         write_atomically(self.folder / SCENARIO_FILE, to_toml(self.scenario).encode())
         self._log.write("end moved", former=former, end=steps * dt)
@@ -310,8 +317,8 @@ class Session:
 
 def as_run(scenario: Scenario) -> Scenario:
     """Return the scenario with the step that reaches its end in whole steps."""
-    setup_steps = Setup.whole_steps(scenario)
-    propagator = replace(scenario.propagator, step=scenario.time.end / setup_steps)
+    end = given(scenario.time.end, "time.end")
+    propagator = replace(scenario.propagator, step=end / Setup.whole_steps(scenario))
     return replace(scenario, propagator=propagator)
 
 

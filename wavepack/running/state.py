@@ -84,7 +84,7 @@ class Record:
         """Return the record that `save` described."""
         facts = json.loads(state["record"])
         incidents = {
-            name: Incident(*state[f"incident/{name}"], reason)
+            name: Incident(state[f"incident/{name}"][0], state[f"incident/{name}"][1], reason)
             for name, reason in facts.pop("reasons").items()
         }
         count = sum(key.startswith("before/") for key in state)

@@ -4,7 +4,7 @@ import math
 import os
 from dataclasses import asdict, dataclass, field
 from functools import cached_property
-from typing import Any
+from typing import Any, TypeVar
 
 import numpy as np
 
@@ -14,8 +14,8 @@ from wavepack.fields import Span
 from wavepack.grid.axis import Axis
 from wavepack.grid.grid import Grid
 from wavepack.observing.flux import FluxDetector, Spectrum
-from wavepack.observing.moments import momentum_density
 from wavepack.observing.incident import Incident, Launch, incident
+from wavepack.observing.moments import momentum_density
 from wavepack.observing.regions import Region, RegionBook
 from wavepack.physics.absorbers import Layer, suited_strength
 from wavepack.physics.edges import covered_by_span, covered_fraction
@@ -29,6 +29,8 @@ from wavepack.stepping.crank_nicolson import CrankNicolson
 from wavepack.stepping.schedule import Schedule, frame_steps
 from wavepack.stepping.scheme import Clock, Scheme, Stepper
 from wavepack.stepping.split_operator import SplitOperator
+
+T = TypeVar("T")
 
 #: Detectors keep up with this many times the largest kinetic energy expected, so
 #: that what is expected lies below the taper of their band.
@@ -102,7 +104,13 @@ class Setup:
         self.particle = scenario.particle
         self.grid = Grid(
             tuple(
-                Axis(name, spec.start, spec.stop, spec.points, spec.ends)
+                Axis(
+                    name,
+                    given(spec.start, f"grid.{name}.from"),
+                    given(spec.stop, f"grid.{name}.to"),
+                    given(spec.points, f"grid.{name}.points"),
+                    spec.ends,
+                )
                 for name, spec in scenario.grid.items()
             )
         )
@@ -111,17 +119,24 @@ class Setup:
         self._check_overlap()
         if choices is None:
             steps = self.whole_steps(scenario)
-            self.dt = scenario.time.end / steps
+            self.dt = self.end / steps
             self.choices = self._choose(steps)
         else:
             self.dt = choices.dt
             self.choices = choices
-        self.steps = max(1, math.ceil(scenario.time.end / self.dt * (1 - 1e-12)))
+        self.steps = max(1, math.ceil(self.end / self.dt * (1 - 1e-12)))
 
     @staticmethod
     def whole_steps(scenario: Scenario) -> int:
         """Return how many steps, none longer than asked, reach the scenario's end."""
-        return max(1, math.ceil(scenario.time.end / scenario.propagator.step * (1 - 1e-12)))
+        end = given(scenario.time.end, "time.end")
+        step = given(scenario.propagator.step, "propagator.step")
+        return max(1, math.ceil(end / step * (1 - 1e-12)))
+
+    @property
+    def end(self) -> float:
+        """When the run ends [time]."""
+        return given(self.scenario.time.end, "time.end")
 
     @property
     def spectral(self) -> bool:
@@ -290,7 +305,7 @@ class Setup:
                     Fault(
                         "region",
                         f"regions with a role overlap ({names}): some point is claimed "
-                        f"{claimed:.3g} times; give one of them role = \"none\" or move its edge",
+                        f'{claimed:.3g} times; give one of them role = "none" or move its edge',
                         file=self.scenario.name,
                     )
                 ]
@@ -315,7 +330,7 @@ class Setup:
 
     def _choose(self, steps: int) -> Choices:
         strengths = tuple(self._strength(layer) for layer in self.bare_layers)
-        fastest = self.content.largest_kinetic(self.landscape.lowest(self.scenario.time.end))
+        fastest = self.content.largest_kinetic(self.landscape.lowest(self.end))
         reads = math.floor(
             math.pi * self.particle.hbar / (BAND_MARGIN * fastest * self.dt)
         ) if fastest > 0 else 1
@@ -328,7 +343,7 @@ class Setup:
             read = _divisor(record, read)
         reference = Hamiltonian(self.kinetic, self.landscape).energy(self.start[0])
         return Choices(
-            self.dt, self.scenario.time.end, strengths, reference, read, record, self._pause_every(),
+            self.dt, self.end, strengths, reference, read, record, self._pause_every(),
             {spec.name: self._energies(spec) for spec in self.scenario.detector},
             {spec.name: self._sign(spec) for spec in self.scenario.detector},
         )
@@ -378,6 +393,19 @@ class Setup:
     def hamiltonian_bare(self) -> Hamiltonian:
         """The Hamiltonian without its layers."""
         return Hamiltonian(self.kinetic, self.landscape)
+
+
+def given(value: T | None, key: str) -> T:
+    """Return what a scenario that may be run must give.
+
+    Raises
+    ------
+    ValueError
+        If it has been left out, which the rules of a scenario report first.
+    """
+    if value is None:
+        raise ValueError(f"{key}: left out")
+    return value
 
 
 def _divisor(number: int, limit: int) -> int:

@@ -2,9 +2,12 @@
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import Any
+from typing import Any, Literal
 
 from wavepack.fields import Span, declare
+from wavepack.grid.axis import End
+from wavepack.observing.regions import Role
+from wavepack.physics.absorbers import Form
 from wavepack.physics.expressions import Expression
 from wavepack.physics.packets import Packet
 from wavepack.physics.particle import Particle
@@ -38,14 +41,14 @@ class AxisSpec:
     points: int | None = declare(
         "whole", "number of points", at_least=8, at_most=2**24, default=None
     )
-    ends: tuple[str, str] = declare(
+    ends: tuple[End, End] = declare(
         "custom",
         "what stands at the ends: absorbing, walls or periodic, or a pair of two",
         default=("absorbing", "absorbing"),
     )
 
     @classmethod
-    def read_ends(cls, raw: object, units: UnitSystem) -> tuple[str, str]:
+    def read_ends(cls, raw: object, units: UnitSystem) -> tuple[End, End]:
         """Return the pair of ends of one word or a list of two.
 
         Raises
@@ -62,7 +65,7 @@ class AxisSpec:
         return (pair[0], pair[1])
 
     @classmethod
-    def write_ends(cls, value: tuple[str, str]) -> list[str]:
+    def write_ends(cls, value: tuple[End, End]) -> list[str]:
         """Return the pair as `read_ends` reads it."""
         return list(value)
 
@@ -77,7 +80,7 @@ class AbsorberSpec:
         dimension="length",
         default={},
     )
-    form: str = declare(
+    form: Form = declare(
         "choice",
         "shape of the negative imaginary potential",
         options=("transmission-free", "polynomial"),
@@ -182,7 +185,7 @@ class RegionSpec:
     """A named part of space whose probability is accounted for."""
 
     name: str = declare("text", "its name; default: region and its number", default="")
-    role: str = declare(
+    role: Role = declare(
         "choice",
         "what being there means; none (or held): recorded only",
         options=("transmitted", "reflected", "none", "held"),
@@ -307,7 +310,7 @@ class OutputSpec:
         "choice", "what a frame holds", options=("wavefunction", "density"), default="wavefunction"
     )
     thin: int = declare("whole", "keep every n-th point along each axis", at_least=1, default=1)
-    precision: str = declare(
+    precision: Literal["single", "double"] = declare(
         "choice", "of the frames", options=("single", "double"), default="double"
     )
     record_every: float | None = declare(

@@ -1,10 +1,10 @@
 """Banded complex systems: factored once, solved for many right-hand sides."""
 
 import numpy as np
-import scipy.linalg.lapack as lapack
 import scipy.sparse
+from scipy.linalg import lapack
 
-from wavepack.arrays import ComplexArray
+from wavepack.arrays import ComplexArray, IndexArray
 
 
 class BandedFactor:
@@ -58,7 +58,7 @@ class BandedFactor:
         ]
 
     def _factor(
-        self, rows: ComplexArray, columns: ComplexArray, values: ComplexArray
+        self, rows: IndexArray, columns: IndexArray, values: ComplexArray
     ) -> None:
         n, width = self._n, self._width
         if width == 1 and n > 2:
@@ -89,7 +89,7 @@ class BandedFactor:
         return np.asarray(solution).reshape(right.shape, order="F")
 
     def _set_corners(
-        self, rows: ComplexArray, columns: ComplexArray, values: ComplexArray
+        self, rows: IndexArray, columns: IndexArray, values: ComplexArray
     ) -> None:
         rank = self._corner_columns.size
         u = np.zeros((self._n, rank), complex, order="F")

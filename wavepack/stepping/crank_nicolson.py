@@ -22,11 +22,11 @@ from dataclasses import dataclass
 import numpy as np
 import scipy.sparse
 
-from wavepack.arrays import ComplexArray, RealArray
+from wavepack.arrays import ComplexArray, IndexArray, RealArray
+from wavepack.grid.blocks import Blocks
 from wavepack.physics.hamiltonian import Hamiltonian
 from wavepack.physics.kinetic import StaggeredKinetic
 from wavepack.stepping.banded import BandedFactor
-from wavepack.grid.blocks import Blocks
 from wavepack.stepping.outer import damping_of_half_step, outer_kicks
 from wavepack.stepping.scheme import Clock, Stepper
 from wavepack.stepping.tally import Tally
@@ -139,7 +139,7 @@ def _cayley_lines(
 
 def _equal_lines(
     kinetic: StaggeredKinetic, axis: int
-) -> list[tuple[float | RealArray, RealArray]]:
+) -> list[tuple[float | RealArray, IndexArray]]:
     """Return the lines along an axis, grouped by equal masses: (stiffness, lines)."""
     count = kinetic.grid.size // kinetic.grid.shape[axis]
     stiffness = kinetic.stiffness(axis)

@@ -6,8 +6,8 @@ from collections.abc import Callable
 import numpy as np
 
 from wavepack.arrays import ComplexArray, RealArray
-from wavepack.physics.hamiltonian import Hamiltonian
 from wavepack.grid.blocks import Blocks
+from wavepack.physics.hamiltonian import Hamiltonian
 from wavepack.stepping.kick import DrivenPhase, Kick, phase_factor
 from wavepack.stepping.scheme import Kicks
 
@@ -27,6 +27,7 @@ def outer_kicks(
     """
     scale = share * duration / hamiltonian.particle.hbar
     landscape = hamiltonian.landscape
+    single: ComplexArray | RealArray
     if share:
         single = phase_factor(landscape.static * scale, blocks)
         for i, factor in enumerate(damping):

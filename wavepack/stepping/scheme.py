@@ -13,8 +13,8 @@ from typing import Protocol
 import numpy as np
 
 from wavepack.arrays import ComplexArray, RealArray
-from wavepack.physics.hamiltonian import Hamiltonian
 from wavepack.grid.blocks import Blocks
+from wavepack.physics.hamiltonian import Hamiltonian
 from wavepack.stepping.kick import Kick
 from wavepack.stepping.tally import Tally
 

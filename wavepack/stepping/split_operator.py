@@ -21,10 +21,10 @@ from typing import Literal
 import numpy as np
 
 from wavepack.arrays import ComplexArray
+from wavepack.grid.blocks import Blocks
 from wavepack.grid.spectral import TransformPair, empty_field
 from wavepack.physics.hamiltonian import Hamiltonian
 from wavepack.physics.kinetic import SpectralKinetic
-from wavepack.grid.blocks import Blocks
 from wavepack.stepping.outer import damping_of_half_step, gradient_kick, outer_kicks
 from wavepack.stepping.scheme import Clock, Stepper
 from wavepack.stepping.tally import Tally

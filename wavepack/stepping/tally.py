@@ -78,10 +78,10 @@ class Tally:
         """Add up what is still only copied."""
         if not self._filled:
             return
-        for buffer, total in zip(self._buffers, self._twice, strict=True):
+        for i, buffer in enumerate(self._buffers):
             parts = buffer[: self._filled].view(np.float64).reshape(self._filled, -1)
             squares = np.einsum("ij,ij->j", parts, parts)
-            total += squares.reshape(-1, 2).sum(axis=1).reshape(total.shape)
+            self._twice[i] += squares.reshape(-1, 2).sum(axis=1).reshape(self._twice[i].shape)
         self._filled = 0
 
     def patches(self) -> list[Patch]:

@@ -31,7 +31,7 @@ def constant(name: str) -> float:
     joule = 1 / constants.e
     bohr = constants.physical_constants["Bohr radius"][0]
     hartree = constants.physical_constants["Hartree energy"][0]
-    return {
+    table: dict[str, float] = {
         "hbar^2/2m_e [eV nm^2]": constants.hbar**2 / (2 * electron) * joule * 1e18,
         "hbar [eV fs]": constants.hbar * joule * 1e15,
         "hartree [eV]": hartree * joule,
@@ -41,7 +41,8 @@ def constant(name: str) -> float:
         "atomic mass unit [m_e]": constants.atomic_mass / electron,
         "k_B 300 K [eV]": constants.k * 300 * joule,
         "k_B 77 K [eV]": constants.k * 77 * joule,
-    }[name]
+    }
+    return table[name]
 
 
 def free_covariance(
