@@ -17,10 +17,12 @@ EPS = float(np.finfo(float).eps)
 #: One transform or one matrix product of a few thousand points.
 TRANSFORM = 100 * EPS
 
+
 #: Books and norm after a run: rounding adds up at worst like the number of steps.
 def books(steps: int) -> float:
     """Return the round-off allowed in a sum of probabilities after some steps."""
     return 20 * EPS * max(steps, 100)
+
 
 #: Fitted order of a method against the claimed one.
 ORDER = 0.05

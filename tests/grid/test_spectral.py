@@ -68,9 +68,7 @@ def test_readout_drops_what_is_not_kept() -> None:
 
 @pytest.mark.parametrize("ends", ENDS)
 @pytest.mark.parametrize("other", ENDS)
-def test_planned_pair_agrees_with_lines(
-    ends: tuple[End, End], other: tuple[End, End]
-) -> None:
+def test_planned_pair_agrees_with_lines(ends: tuple[End, End], other: tuple[End, End]) -> None:
     """The planned in-place pair is the line transforms but for its constant."""
     grid = Grid((Axis("x", 0, 1, 12, ends), Axis("y", 0, 1, 9, other)))
     field = spectral.empty_field(grid.shape)

@@ -98,15 +98,14 @@ def sidebands(
     """
     first = math.ceil((energies[0] - central) / photon + 0.5 - 1e-9)
     last = math.floor((energies[-1] - central) / photon - 0.5 + 1e-9)
-    running = np.concatenate(
-        ([0.0], np.cumsum((flux[1:] + flux[:-1]) / 2 * np.diff(energies)))
-    )
+    running = np.concatenate(([0.0], np.cumsum((flux[1:] + flux[:-1]) / 2 * np.diff(energies))))
     bands = []
     for n in range(first, last + 1):
         edges = central + (n + np.array([-0.5, 0.5])) * photon
         below, above = (_running_at(edge, energies, flux, running) for edge in edges)
-        bands.append({"n": n, "energy": float(central + n * photon),
-                      "flux": quantity(above - below)})
+        bands.append(
+            {"n": n, "energy": float(central + n * photon), "flux": quantity(above - below)}
+        )
     return bands
 
 

@@ -135,7 +135,11 @@ class TransformPair:
             ):
                 plans.append(
                     fftw.FFTW(
-                        array, array, axes=fourier, direction=direction, flags=flags,
+                        array,
+                        array,
+                        axes=fourier,
+                        direction=direction,
+                        flags=flags,
                         threads=threads,
                     )
                 )
@@ -144,7 +148,11 @@ class TransformPair:
         for i, axis in enumerate(grid.axes):
             if axis.basis == "sine":
                 plan = fftw.FFTW(
-                    pairs, pairs, axes=(i,), direction="FFTW_RODFT00", flags=flags,
+                    pairs,
+                    pairs,
+                    axes=(i,),
+                    direction="FFTW_RODFT00",
+                    flags=flags,
                     threads=threads,
                 )
                 self._forward.append(plan)

@@ -233,5 +233,3 @@ class Overlap:
     def __call__(self, psi: ComplexArray) -> complex:
         """Return the overlap with a later state."""
         return complex(np.sum(np.conj(self._start) * psi[self._box])) * self._cell
-
-

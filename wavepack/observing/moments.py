@@ -66,8 +66,15 @@ def moments(
     if norm < LEAST_NORM:
         nothing = (float("nan"),) * grid.ndim
         return Moments(
-            norm, float("nan"), float("nan"), nothing, nothing, nothing, nothing,
-            sums[: len(PARTS)], sums[len(PARTS) :],
+            norm,
+            float("nan"),
+            float("nan"),
+            nothing,
+            nothing,
+            nothing,
+            nothing,
+            sums[: len(PARTS)],
+            sums[len(PARTS) :],
         )
     position, spread = zip(
         *(_mean_and_spread(a.coordinates, m) for a, m in zip(grid.axes, marginals, strict=True)),
@@ -80,8 +87,16 @@ def moments(
     else:
         kinetic = hamiltonian.particle.stiffness * sum(squares)
     return Moments(
-        norm, potential / norm, kinetic, position, spread, momentum, momentum_spread,
-        sums[: len(PARTS)], sums[len(PARTS) :], beyond,
+        norm,
+        potential / norm,
+        kinetic,
+        position,
+        spread,
+        momentum,
+        momentum_spread,
+        sums[: len(PARTS)],
+        sums[len(PARTS) :],
+        beyond,
     )
 
 

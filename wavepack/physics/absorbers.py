@@ -136,8 +136,13 @@ def suited_strength(
 
     def given_back(log_strength: float) -> float:
         trial = Layer(
-            layer.axis, layer.upper, layer.start, layer.stop, layer.form,
-            mean * math.exp(log_strength), layer.power,
+            layer.axis,
+            layer.upper,
+            layer.start,
+            layer.stop,
+            layer.form,
+            mean * math.exp(log_strength),
+            layer.power,
         )
         back = reflection(trial, energies, stiffness, closed=closed, slices=120)
         return float(np.sum(weights * back))

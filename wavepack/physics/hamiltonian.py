@@ -46,9 +46,7 @@ class Hamiltonian:
     @cached_property
     def damping(self) -> tuple[RealArray, ...]:
         """W [energy] of all layers, one vector an axis; they add up over axes."""
-        return tuple(
-            damping_of(self.layers, axis, i) for i, axis in enumerate(self.grid.axes)
-        )
+        return tuple(damping_of(self.layers, axis, i) for i, axis in enumerate(self.grid.axes))
 
     def damping_factors(self, duration: float) -> tuple[RealArray, ...]:
         r"""Return :math:`e^{-W\,\tau/\hbar}` for a duration, one vector an axis."""

@@ -311,7 +311,10 @@ def slope_matrix(axis: Axis, order: int) -> scipy.sparse.csr_array:
     """
     n = axis.points
     stencil = {2: ((0, -1.0), (1, 1.0))}.get(order) or (
-        (-1, 1 / 24), (0, -27 / 24), (1, 27 / 24), (2, -1 / 24),
+        (-1, 1 / 24),
+        (0, -27 / 24),
+        (1, 27 / 24),
+        (2, -1 / 24),
     )
     walls = axis.basis == "sine"
     links = n + walls

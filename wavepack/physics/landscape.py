@@ -53,7 +53,8 @@ class Landscape:
         self.static = self._assemble(self.static_pieces)
         self.driven = tuple(
             self._driven(piece, piece.drive.bound(particle.hbar))
-            for piece in acting if piece.drive is not None
+            for piece in acting
+            if piece.drive is not None
         )
 
     @property

@@ -75,9 +75,7 @@ class Journal:
         Where rows go.
     """
 
-    def __init__(
-        self, setup: Setup, stepper: Stepper, overlap: Overlap, writer: RunWriter
-    ) -> None:
+    def __init__(self, setup: Setup, stepper: Stepper, overlap: Overlap, writer: RunWriter) -> None:
         self.detectors: tuple[FluxDetector, ...] = setup.detectors(stepper.clock)
         self.beyond_band = 0.0
         self._setup = setup
@@ -112,7 +110,10 @@ class Journal:
         """Return where the probability is; raises `NumericalFault` if it cannot be."""
         with np.errstate(invalid="ignore", over="ignore"):
             seen = moments(
-                snapshot.psi, snapshot.time, self._setup.hamiltonian, self._setup.book,
+                snapshot.psi,
+                snapshot.time,
+                self._setup.hamiltonian,
+                self._setup.book,
                 band=self._setup.band,
             )
             absorbed = self._setup.book.of_patches(self._stepper.tally.patches())
@@ -181,10 +182,14 @@ class Journal:
         norm = standing.moments.norm
         if not np.isfinite(norm):
             bad = np.argwhere(~np.isfinite(psi))
-            where = ", ".join(
-                f"{axis.name} = {axis.coordinates[i]:.4g}"
-                for axis, i in zip(self._setup.grid.axes, bad[0], strict=True)
-            ) if bad.size else "the sum of the density"
+            where = (
+                ", ".join(
+                    f"{axis.name} = {axis.coordinates[i]:.4g}"
+                    for axis, i in zip(self._setup.grid.axes, bad[0], strict=True)
+                )
+                if bad.size
+                else "the sum of the density"
+            )
             raise NumericalFault(f"{place}: the state is not finite at {where}")
         if norm > 1 + OPEN_BOOKS:
             raise NumericalFault(f"{place}: the norm has grown to {norm:.9g}; it started at 1")

@@ -170,8 +170,14 @@ class Session:
         stepper.psi[...] = psi
         before = tuple(momentum_density(psi, setup.grid, i)[1] for i in range(setup.grid.ndim))
         self._record = Record(
-            setup.choices, setup.incidents(), setup.central_energy(), found, before, threads,
-            knowledge, spectral.planner_version(),
+            setup.choices,
+            setup.incidents(),
+            setup.central_energy(),
+            found,
+            before,
+            threads,
+            knowledge,
+            spectral.planner_version(),
         )
         overlap = Overlap.of(psi, setup.grid.cell)
         text = to_toml(self.scenario)
@@ -320,5 +326,3 @@ def as_run(scenario: Scenario) -> Scenario:
     end = given(scenario.time.end, "time.end")
     propagator = replace(scenario.propagator, step=end / Setup.whole_steps(scenario))
     return replace(scenario, propagator=propagator)
-
-

@@ -88,7 +88,9 @@ def _detector(
     }
     if len(photons) == 1 and detector.spectrum is not None:
         bands = sidebands(
-            detector.spectrum.energies, detector.flux_by_energy(), record.central_energy,
+            detector.spectrum.energies,
+            detector.flux_by_energy(),
+            record.central_energy,
             photons.pop(),
         )
     return detector_results(detector, record.incidents[detector.name], units, bands)
@@ -102,8 +104,7 @@ def _numerics(
     return {
         "points": {axis.name: axis.points for axis in setup.grid.axes},
         "spacing": {
-            axis.name: {"value": axis.spacing, "unit": units["length"]}
-            for axis in setup.grid.axes
+            axis.name: {"value": axis.spacing, "unit": units["length"]} for axis in setup.grid.axes
         },
         "step": {"value": setup.dt, "unit": units["time"]},
         "steps": setup.steps,

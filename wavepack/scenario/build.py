@@ -157,7 +157,12 @@ class Setup:
         """Kinetic operator, potential and layers."""
         layers = tuple(
             Layer(
-                layer.axis, layer.upper, layer.start, layer.stop, layer.form, strength,
+                layer.axis,
+                layer.upper,
+                layer.start,
+                layer.stop,
+                layer.form,
+                strength,
                 layer.power,
             )
             for layer, strength in zip(self.bare_layers, self.choices.strengths, strict=True)
@@ -212,8 +217,12 @@ class Setup:
             self.scenario.output.frames, self.choices.span, self.dt, self.steps * self.dt
         )
         return Schedule(
-            self.dt, self.steps, self.choices.read_every, self.choices.record_every,
-            self.choices.pause_every, frames,
+            self.dt,
+            self.steps,
+            self.choices.read_every,
+            self.choices.record_every,
+            self.choices.pause_every,
+            frames,
         )
 
     @property
@@ -243,7 +252,10 @@ class Setup:
         """Return the incident weight by energy for each detector."""
         return {
             spec.name: incident(
-                self.start[0], self.hamiltonian, self.grid.index(spec.axis), spec.at,
+                self.start[0],
+                self.hamiltonian,
+                self.grid.index(spec.axis),
+                spec.at,
                 np.linspace(*self.choices.energies[spec.name]),
             )
             for spec in self.scenario.detector
@@ -331,9 +343,11 @@ class Setup:
     def _choose(self, steps: int) -> Choices:
         strengths = tuple(self._strength(layer) for layer in self.bare_layers)
         fastest = self.content.largest_kinetic(self.landscape.lowest(self.end))
-        reads = math.floor(
-            math.pi * self.particle.hbar / (BAND_MARGIN * fastest * self.dt)
-        ) if fastest > 0 else 1
+        reads = (
+            math.floor(math.pi * self.particle.hbar / (BAND_MARGIN * fastest * self.dt))
+            if fastest > 0
+            else 1
+        )
         record = self._record_every(steps)
         limit = record or max(1, steps // RECORDS)
         read = max(1, min(reads, limit)) if self.scenario.detector else limit
@@ -343,7 +357,13 @@ class Setup:
             read = _divisor(record, read)
         reference = Hamiltonian(self.kinetic, self.landscape).energy(self.start[0])
         return Choices(
-            self.dt, self.end, strengths, reference, read, record, self._pause_every(),
+            self.dt,
+            self.end,
+            strengths,
+            reference,
+            read,
+            record,
+            self._pause_every(),
             {spec.name: self._energies(spec) for spec in self.scenario.detector},
             {spec.name: self._sign(spec) for spec in self.scenario.detector},
         )

@@ -121,14 +121,17 @@ def content(psi: ComplexArray, grid: Grid, landscape: Landscape) -> Content:
         weights.append(density[keep] / density[keep].sum())
     probability = np.abs(psi) ** 2
     probability /= probability.sum()
-    centre = tuple(
-        float(np.sum(probability * x)) for x in grid.coordinates
-    )
+    centre = tuple(float(np.sum(probability * x)) for x in grid.coordinates)
     photons = tuple(
         part.drive.photon_energy for part in landscape.driven if part.drive.photon_energy
     )
     launch = float(np.sum(probability * landscape.at(0.0)))
     return Content(
-        grid, tuple(wavenumbers), tuple(weights), centre, launch,
-        landscape.particle.stiffness, photons,
+        grid,
+        tuple(wavenumbers),
+        tuple(weights),
+        centre,
+        launch,
+        landscape.particle.stiffness,
+        photons,
     )

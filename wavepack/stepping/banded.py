@@ -53,17 +53,16 @@ class BandedFactor:
     def _corner_shares(self, y: ComplexArray) -> list[ComplexArray]:
         ends = y[self._corner_columns]
         return [
-            sum(weight * end for weight, end in zip(row, ends, strict=True))
-            for row in self._small
+            sum(weight * end for weight, end in zip(row, ends, strict=True)) for row in self._small
         ]
 
-    def _factor(
-        self, rows: IndexArray, columns: IndexArray, values: ComplexArray
-    ) -> None:
+    def _factor(self, rows: IndexArray, columns: IndexArray, values: ComplexArray) -> None:
         n, width = self._n, self._width
         if width == 1 and n > 2:
             lower, diagonal, upper = (
-                np.zeros(n - 1, complex), np.zeros(n, complex), np.zeros(n - 1, complex),
+                np.zeros(n - 1, complex),
+                np.zeros(n, complex),
+                np.zeros(n - 1, complex),
             )
             for offset, vector in ((-1, lower), (0, diagonal), (1, upper)):
                 chosen = columns - rows == offset
@@ -88,9 +87,7 @@ class BandedFactor:
             raise ValueError(f"banded solve refused argument {-info}")
         return np.asarray(solution).reshape(right.shape, order="F")
 
-    def _set_corners(
-        self, rows: IndexArray, columns: IndexArray, values: ComplexArray
-    ) -> None:
+    def _set_corners(self, rows: IndexArray, columns: IndexArray, values: ComplexArray) -> None:
         rank = self._corner_columns.size
         u = np.zeros((self._n, rank), complex, order="F")
         np.add.at(u, (rows, np.searchsorted(self._corner_columns, columns)), values)

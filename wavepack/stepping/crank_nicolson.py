@@ -147,6 +147,4 @@ def _equal_lines(
         return [(stiffness, np.arange(count))]
     profiles = np.moveaxis(stiffness, axis, -1).reshape(-1, stiffness.shape[axis])
     distinct, member = np.unique(profiles, axis=0, return_inverse=True)
-    return [
-        (distinct[i], np.flatnonzero(member.ravel() == i)) for i in range(distinct.shape[0])
-    ]
+    return [(distinct[i], np.flatnonzero(member.ravel() == i)) for i in range(distinct.shape[0])]

@@ -94,7 +94,8 @@ def gradient_kick(
                 cross = np.zeros([s.stop - s.start for s in box])
                 for axis in axes:
                     cross -= (
-                        2 * kappa
+                        2
+                        * kappa
                         * landscape.driven_gradient(part, axis)[_within(box, part.box)]
                         * landscape.driven_gradient(other, axis)[_within(box, other.box)]
                     )
@@ -103,9 +104,7 @@ def gradient_kick(
     return Kick(psi, phase_factor(angle, blocks), phases)
 
 
-def _product(
-    a: Callable[[float], float], b: Callable[[float], float]
-) -> Callable[[float], float]:
+def _product(a: Callable[[float], float], b: Callable[[float], float]) -> Callable[[float], float]:
     return lambda t: a(t) * b(t)
 
 

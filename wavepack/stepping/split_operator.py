@@ -83,6 +83,7 @@ def _drift(
     vectors = [np.exp(-1j * e * duration / kinetic.particle.hbar) for e in kinetic.energies]
     first = vectors[0] / pair.norm
     if psi.ndim == 1:
+
         def turn(rows: slice) -> None:
             part = psi[rows]
             np.multiply(part, first[rows], out=part)
