@@ -304,9 +304,8 @@ class Estimates:
         """Whether the packet has no direction: what it does next is not in its momenta."""
         return self._drift**2 < 0.1 * self.central**2
 
-    @cached_property
-    def slow_share(self) -> tuple[float, float]:
-        """Share of the packet too slow to leave by the end, and the time it would take [time].
+    def departure(self, share: float) -> tuple[float, float]:
+        """Return the share too slow to leave by the end, and the time until a share is left.
 
         The path is to the farther absorbing end, or to what turns the packet
         back and from there to the nearer one, at the speed of the launch.
@@ -319,7 +318,7 @@ class Estimates:
         speed = 2 * self.c / self.hbar
         k, w = self.setup.content.wavenumbers[axis], self.setup.content.weights[axis]
         slow = float(w[k < path / (speed * self.end)].sum())
-        slowest = max(self.setup.content.slowest(axis), 1e-6 * self.central)
+        slowest = max(self.setup.content.slowest(axis, share), 1e-6 * self.central)
         return slow, path / (speed * slowest)
 
     @property

@@ -160,7 +160,7 @@ class BoxSurvey(Survey):
 
     def _departure(self) -> Row:
         """Whether the slow part can leave before the end."""
-        slow, needed = self.estimates.slow_share
+        slow, needed = self.estimates.departure(self.limits[0] / 2)
         end = self.estimates.end
         self.quantities |= {"slow_share": slow, "time_needed": needed}
         if self.estimates.resting or self.prepared:
