@@ -24,6 +24,9 @@ from wavepack.physics.kinetic import Plane
 BUFFER_POINTS = 1 << 15
 BUFFER_READINGS = 128
 
+#: Amplitudes below this share of the largest add nothing to an overlap.
+NEGLIGIBLE = 1e-13
+
 
 @dataclass(frozen=True)
 class Spectrum:
@@ -209,7 +212,7 @@ class Overlap:
     def of(cls, psi: ComplexArray, cell: float) -> "Overlap":
         """Return the overlap with a state; ``cell`` is the volume of one cell."""
         size = np.abs(psi)
-        keep = size > 1e-17 * float(size.max())
+        keep = size > NEGLIGIBLE * float(size.max())
         box = []
         for axis in range(psi.ndim):
             others = tuple(i for i in range(psi.ndim) if i != axis)

@@ -123,10 +123,13 @@ def _densities(
                 marginals[axis][rows] = along
             else:
                 marginals[axis] += along
-    for part in landscape.driven:
-        inside = psi[part.box]
-        weight = float(np.sum(part.values * (np.square(inside.real) + np.square(inside.imag))))
-        potential += part.drive.factor(time) * weight * grid.cell
+        for part in landscape.driven:
+            first = max(part.box[0].start, rows.start)
+            last = min(part.box[0].stop, rows.stop)
+            if first < last:
+                own = part.values[first - part.box[0].start : last - part.box[0].start]
+                inside = density[(slice(first - rows.start, last - rows.start), *part.box[1:])]
+                potential += part.drive.factor(time) * float(np.sum(own * inside))
     return sums, marginals, potential
 
 

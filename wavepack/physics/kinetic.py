@@ -21,6 +21,10 @@ from wavepack.grid.grid import Grid
 from wavepack.physics.particle import Particle
 
 
+#: Points of the lines whose energy is summed at once.
+BLOCK_POINTS = 1 << 16
+
+
 @dataclass(frozen=True)
 class Plane:
     r"""How to read a current through a plane across one axis.
@@ -201,9 +205,23 @@ class StaggeredKinetic:
         r"""Return :math:`\sum_\ell \frac{\hbar^2}{2m_\ell}|S\psi|^2 dV` [energy]."""
         total = 0.0
         for i, matrix in enumerate(self.slopes):
-            on_links = _along(matrix, psi, i)
-            total += float(np.sum(self.stiffness(i) * (on_links.real**2 + on_links.imag**2)))
+            lines = np.moveaxis(psi, i, 0)
+            stiffness = np.moveaxis(np.broadcast_to(self.stiffness(i), self._links(i)), i, 0)
+            if psi.ndim == 1:
+                lines, stiffness = lines[:, None], stiffness[:, None]
+            step = max(1, BLOCK_POINTS // psi.shape[i])
+            for first in range(0, lines.shape[1], step):
+                chosen = slice(first, first + step)
+                on_links = matrix @ lines[:, chosen]
+                squares = np.square(on_links.real) + np.square(on_links.imag)
+                total += float(np.sum(stiffness[:, chosen] * squares))
         return total * self.grid.cell
+
+    def _links(self, axis: int) -> tuple[int, ...]:
+        """Shape of the links of one axis."""
+        shape = list(self.grid.shape)
+        shape[axis] = self.slopes[axis].shape[0]
+        return tuple(shape)
 
     def line_matrix(self, axis: int, stiffness: float | RealArray) -> scipy.sparse.csr_array:
         """Return S^T c S for one line, c a number or a vector over its links [energy]."""

@@ -58,6 +58,15 @@ class Landscape:
         )
 
     @property
+    def whole(self) -> tuple[slice, ...]:
+        """The box of the whole grid."""
+        return tuple(slice(0, n) for n in self.grid.shape)
+
+    def everywhere(self, part: DrivenPart) -> bool:
+        """Whether a driven part acts on the whole grid."""
+        return part.box == self.whole
+
+    @property
     def sharp(self) -> bool:
         """Whether any piece has sharp edges."""
         return any(p.sharp for p in self.static_pieces) or any(
@@ -93,6 +102,10 @@ class Landscape:
             (slice(None), *part.box[1:])
         ]
 
+    def piece_gradient(self, piece: Piece, axis: int, rows: slice) -> RealArray:
+        """Return the slope of one piece [energy/length] on a block of rows."""
+        return sample_gradient(piece, self.grid, self.particle, axis, rows)
+
     def blocks(self) -> Iterator[slice]:
         """Yield the rows of axis 0 in blocks of bounded size."""
         rows = max(1, BLOCK_POINTS * self.grid.shape[0] // self.grid.size)
@@ -109,6 +122,8 @@ class Landscape:
     def _driven(self, piece: Piece, drive: Drive) -> DrivenPart:
         values = self._assemble([piece])
         box = _box(np.abs(values) > NEGLIGIBLE * float(np.abs(values).max()))
+        if 2 * values[box].size >= self.grid.size:
+            box = self.whole
         return DrivenPart(piece, drive, box, values[box].copy())
 
 

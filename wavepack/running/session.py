@@ -9,6 +9,8 @@ from pathlib import Path
 from types import TracebackType
 from typing import Any, Final, Self
 
+import numpy as np
+
 from wavepack import __version__
 from wavepack.archive import checkpoint
 from wavepack.archive.disk import write_atomically
@@ -163,28 +165,23 @@ class Session:
         self._resources.close()
 
     def _begin(self, setup: Setup, threads: int) -> None:
-        with shared_knowledge():
-            stepper = setup.bind(threads)
-            knowledge = spectral.remember().text if setup.spectral else b""
         psi, found = setup.start
-        stepper.psi[...] = psi
         before = tuple(momentum_density(psi, setup.grid, i)[1] for i in range(setup.grid.ndim))
-        self._record = Record(
-            setup.choices,
-            setup.incidents(),
-            setup.central_energy(),
-            found,
-            before,
-            threads,
-            knowledge,
-            spectral.planner_version(),
-        )
+        incidents, central = setup.incidents(), setup.central_energy()
         overlap = Overlap.of(psi, setup.grid.cell)
         text = to_toml(self.scenario)
+        plan = run_plan(setup, text)
+        del psi
+        with shared_knowledge():
+            stepper = setup.bind(threads, setup.hand_over)
+            knowledge = spectral.remember().text if setup.spectral else b""
+        self._record = Record(
+            setup.choices, incidents, central, found, before, threads, knowledge,
+            spectral.planner_version(),
+        )
         write_atomically(self.folder / SCENARIO_FILE, text.encode())
-        writer = RunWriter.create(self.folder, run_plan(setup, text))
+        writer = RunWriter.create(self.folder, plan)
         self._assemble(setup, stepper, overlap, writer)
-        setup.forget_start()
         write_results(self.folder, self._summary("running", None))
 
     def _take_up(
@@ -199,13 +196,12 @@ class Session:
         setup = Setup(self.scenario, record.choices)
         threads = threads or record.threads
         with given_knowledge(record.knowledge):
-            stepper = setup.bind(threads)
+            stepper = setup.bind(threads, lambda psi: np.copyto(psi, state["psi"]))
         if not record.plans_alike or threads != record.threads:
             self.notes.append(
                 "transforms are planned anew (other library or threads): the last bits may differ "
                 "from those of an unbroken run"
             )
-        stepper.psi[...] = state["psi"]
         stepper.tally.restore(found.section("tally"))
         writer = RunWriter.reopen(self.folder, json.loads(state["counts"]))
         self.notes += writer.notes

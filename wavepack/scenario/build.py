@@ -27,7 +27,7 @@ from wavepack.scenario.content import Content, content
 from wavepack.scenario.schema import DetectorSpec, RegionSpec, Scenario
 from wavepack.stepping.crank_nicolson import CrankNicolson
 from wavepack.stepping.schedule import Schedule, frame_steps
-from wavepack.stepping.scheme import Clock, Scheme, Stepper
+from wavepack.stepping.scheme import Clock, Fill, Scheme, Stepper, leave_empty
 from wavepack.stepping.split_operator import SplitOperator
 
 T = TypeVar("T")
@@ -205,11 +205,17 @@ class Setup:
             return SplitOperator(4 if self.scenario.propagator.order == 4 else 2)
         return CrankNicolson()
 
-    def bind(self, threads: int) -> Stepper:
-        """Return the stepper; its array is not yet filled."""
+    def bind(self, threads: int, fill: Fill = leave_empty) -> Stepper:
+        """Return the stepper; ``fill`` writes the state into its array."""
         return self.scheme.bind(
-            self.hamiltonian, self.dt, threads=threads, reference=self.choices.reference
+            self.hamiltonian, self.dt, threads=threads, reference=self.choices.reference,
+            fill=fill,
         )
+
+    def hand_over(self, psi: ComplexArray) -> None:
+        """Write the initial state into an array and let go of it."""
+        psi[...] = self.start[0]
+        self.__dict__.pop("start", None)
 
     def schedule(self) -> Schedule:
         """Return the stops, up to the scenario's end."""
@@ -260,10 +266,6 @@ class Setup:
             )
             for spec in self.scenario.detector
         }
-
-    def forget_start(self) -> None:
-        """Let go of the initial state, once it has been handed on."""
-        self.__dict__.pop("start", None)
 
     def default_threads(self) -> int:
         """Return one thread for small fields, else the processors this process may use."""

@@ -28,7 +28,7 @@ from wavepack.physics.hamiltonian import Hamiltonian
 from wavepack.physics.kinetic import StaggeredKinetic
 from wavepack.stepping.banded import BandedFactor
 from wavepack.stepping.outer import damping_of_half_step, outer_kicks
-from wavepack.stepping.scheme import Clock, Stepper
+from wavepack.stepping.scheme import Clock, Fill, Stepper, leave_empty
 from wavepack.stepping.tally import Tally
 
 #: Lines solved at once: their right-hand sides stay in cache.
@@ -40,7 +40,13 @@ class CrankNicolson:
     """Cayley steps of order 2 in time."""
 
     def bind(
-        self, hamiltonian: Hamiltonian, dt: float, *, threads: int = 1, reference: float = 0.0
+        self,
+        hamiltonian: Hamiltonian,
+        dt: float,
+        *,
+        threads: int = 1,
+        reference: float = 0.0,
+        fill: Fill = leave_empty,
     ) -> Stepper:
         """Return the stepper.
 
@@ -52,7 +58,8 @@ class CrankNicolson:
         kinetic = hamiltonian.kinetic
         if not isinstance(kinetic, StaggeredKinetic):
             raise TypeError("Crank-Nicolson needs the kinetic operator by differences")
-        psi = np.empty(hamiltonian.grid.shape, dtype=np.complex128)
+        psi = np.zeros(hamiltonian.grid.shape, dtype=np.complex128)
+        fill(psi)
         blocks = Blocks(psi.shape, threads)
         damping = damping_of_half_step(hamiltonian, dt)
         tally = Tally(psi, hamiltonian.grid, damping, buffered=blocks.single)

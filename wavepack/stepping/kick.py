@@ -2,19 +2,27 @@ r"""The factor :math:`e^{-i\phi(x,t)}` of a real potential, with the layers' dam
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from typing import TypeAlias
 
 import numpy as np
+import numpy.typing as npt
 
 from wavepack.arrays import ComplexArray, RealArray
 from wavepack.grid.blocks import Blocks
 
 
+#: Values that need no more than single precision.
+SmallArray: TypeAlias = npt.NDArray[np.float32]
+Factor: TypeAlias = Callable[[float], float]
+Term: TypeAlias = tuple[Factor, RealArray | SmallArray]
+
+
 @dataclass(frozen=True)
 class DrivenPhase:
-    """A phase that a driven part adds inside a box: sum of f_j(t) phases_j."""
+    """A phase that driven parts add inside a box: sum of f_j(t) values_j."""
 
     box: tuple[slice, ...]
-    terms: tuple[tuple[Callable[[float], float], RealArray], ...]
+    terms: tuple[Term, ...]
 
 
 class Kick:
@@ -22,24 +30,29 @@ class Kick:
 
     Parameters
     ----------
-    static : complex or real array, shape of the grid or broadcasting to it
-        The static factor, damping included.
+    static : sequence of complex or real arrays
+        Static factors, damping included, multiplied one after the other; each
+        has the grid's shape or broadcasts to it.
     driven : sequence of DrivenPhase
         Phases [radians] that are subtracted: the state gets
         :math:`e^{-i\sum f_j(t)\phi_j}`.
     """
 
     def __init__(
-        self, psi: ComplexArray, static: ComplexArray | RealArray, driven: Sequence[DrivenPhase]
+        self,
+        psi: ComplexArray,
+        static: Sequence[ComplexArray | RealArray],
+        driven: Sequence[DrivenPhase],
     ) -> None:
         self._psi = psi
-        self._static = static
+        self._static = tuple(static)
         self._driven = tuple(driven)
 
     def apply(self, rows: slice, time: float) -> None:
         """Kick a block of rows at a time."""
         part = self._psi[rows]
-        np.multiply(part, self._static[rows], out=part)
+        for factor in self._static:
+            np.multiply(part, factor if len(factor) == 1 else factor[rows], out=part)
         for phase in self._driven:
             first = max(phase.box[0].start, rows.start)
             last = min(phase.box[0].stop, rows.stop)
@@ -63,10 +76,11 @@ class Kick:
             np.multiply(part, np.conj(turn, out=turn), out=part)
 
 
-def phase_factor(angle: RealArray, blocks: Blocks) -> ComplexArray:
-    """Return exp(-i angle), built block by block."""
-    result = np.empty(angle.shape, dtype=np.complex128)
+def phase_factor(potential: RealArray, scale: float, blocks: Blocks) -> ComplexArray:
+    """Return exp(-i scale V), built block by block."""
+    result = np.empty(potential.shape, dtype=np.complex128)
     for rows in blocks.slices:
-        np.cos(angle[rows], out=result[rows].real)
-        np.sin(-angle[rows], out=result[rows].imag)
+        angle = potential[rows] * scale
+        np.cos(angle, out=result[rows].real)
+        np.sin(-angle, out=result[rows].imag)
     return result

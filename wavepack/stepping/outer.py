@@ -1,14 +1,15 @@
 """The outer kicks shared by all schemes: potential phase times damping."""
 
 import math
-from collections.abc import Callable
+from collections.abc import Sequence
 
 import numpy as np
 
 from wavepack.arrays import ComplexArray, RealArray
 from wavepack.grid.blocks import Blocks
 from wavepack.physics.hamiltonian import Hamiltonian
-from wavepack.stepping.kick import DrivenPhase, Kick, phase_factor
+from wavepack.physics.landscape import DrivenPart, Landscape
+from wavepack.stepping.kick import DrivenPhase, Factor, Kick, SmallArray, Term, phase_factor
 from wavepack.stepping.scheme import Kicks
 
 
@@ -27,27 +28,63 @@ def outer_kicks(
     """
     scale = share * duration / hamiltonian.particle.hbar
     landscape = hamiltonian.landscape
-    single: ComplexArray | RealArray
-    if share:
-        single = phase_factor(landscape.static * scale, blocks)
-        for i, factor in enumerate(damping):
-            if np.any(factor < 1):
-                single *= hamiltonian.grid.along(factor, i)
+    parts = landscape.driven if share else ()
+    shapes = [
+        hamiltonian.grid.along(d, i) for i, d in enumerate(damping) if np.any(d < 1)
+    ]
+    if any(landscape.everywhere(part) for part in parts):
+        # The phase is computed anew at every point anyhow: the static part joins it.
+        single, fused = shapes, [d * d for d in shapes]
+        always = [(_constant(scale), landscape.static)]
     else:
-        single = np.ones(hamiltonian.grid.shape)
-        for i, factor in enumerate(damping):
-            single = single * hamiltonian.grid.along(factor, i)
-    driven: list[list[DrivenPhase]] = [[], []]
-    if share:
-        for part in landscape.driven:
-            for times, phases in enumerate(driven, start=1):
-                term = (_scaled(part.drive.factor, times), part.values * scale)
-                phases.append(DrivenPhase(part.box, (term,)))
-    return Kicks(Kick(psi, single, driven[0]), Kick(psi, single * single, driven[1]))
+        factor: ComplexArray | RealArray = (
+            phase_factor(landscape.static, scale, blocks) if share
+            else np.ones(hamiltonian.grid.shape)
+        )
+        for d in shapes:
+            factor *= d
+        # One factor squared where fields are small; large ones are multiplied
+        # twice while in cache, which saves a whole field.
+        single, fused = [factor], [factor * factor] if blocks.single else [factor, factor]
+        always = []
+    terms = [(part, _scaled(part.drive.factor, scale), part.values) for part in parts]
+    return Kicks(
+        Kick(psi, single, _phases(landscape, always, terms)),
+        Kick(psi, fused, _phases(landscape, _twice(always), [(p, _scaled(f, 2), v) for p, f, v in terms])),
+    )
 
 
-def _scaled(factor: Callable[[float], float], times: int) -> Callable[[float], float]:
-    return factor if times == 1 else lambda t: times * factor(t)
+def _phases(
+    landscape: Landscape,
+    always: Sequence[Term],
+    terms: Sequence[tuple[DrivenPart, Factor, RealArray | SmallArray]],
+) -> list[DrivenPhase]:
+    """Gather terms by the box in which they act; those of the whole grid come first."""
+    boxes: dict[tuple[tuple[int, int], ...], list[Term]] = {}
+    if always:
+        boxes[_corners(landscape.whole)] = list(always)
+    for part, factor, values in terms:
+        boxes.setdefault(_corners(part.box), []).append((factor, values))
+    return [
+        DrivenPhase(tuple(slice(*pair) for pair in corners), tuple(found))
+        for corners, found in boxes.items()
+    ]
+
+
+def _corners(box: tuple[slice, ...]) -> tuple[tuple[int, int], ...]:
+    return tuple((s.start, s.stop) for s in box)
+
+
+def _constant(value: float) -> Factor:
+    return lambda _: value
+
+
+def _twice(terms: Sequence[Term]) -> list[Term]:
+    return [(_scaled(factor, 2), values) for factor, values in terms]
+
+
+def _scaled(factor: Factor, scale: float) -> Factor:
+    return lambda t: scale * factor(t)
 
 
 def gradient_kick(
@@ -67,24 +104,32 @@ def gradient_kick(
     kappa = duration**2 / (24 * particle.hbar**2) * particle.stiffness
     scale = share * duration / particle.hbar
     axes = range(hamiltonian.grid.ndim)
-    angle = landscape.static.copy()
-    for rows in landscape.blocks():
-        for axis in axes:
-            angle[rows] -= kappa * landscape.static_gradient(axis, rows) ** 2
-    angle *= scale
-    phases = []
     parts = landscape.driven
+    static: list[ComplexArray] = []
+    always: list[Term] = []
+    if any(landscape.everywhere(part) for part in parts):
+        correction = np.zeros(hamiltonian.grid.shape, dtype=np.float32)
+        for rows in landscape.blocks():
+            for axis in axes:
+                correction[rows] -= kappa * landscape.static_gradient(axis, rows) ** 2
+        always = [(_constant(scale), landscape.static), (_constant(scale), correction)]
+    else:
+        corrected = landscape.static.copy()
+        for rows in landscape.blocks():
+            for axis in axes:
+                corrected[rows] -= kappa * landscape.static_gradient(axis, rows) ** 2
+        static = [phase_factor(corrected, scale, blocks)]
+        del corrected
+    terms: list[tuple[DrivenPart, Factor, RealArray | SmallArray]] = []
+    crossed: list[DrivenPhase] = []
     for i, part in enumerate(parts):
-        linear = part.values.copy()
-        square = np.zeros_like(linear)
-        for axis in axes:
-            own = landscape.driven_gradient(part, axis)
-            rest = landscape.static_gradient(axis, part.box[0])[(slice(None), *part.box[1:])]
-            linear -= 2 * kappa * own * rest
-            square -= kappa * own**2
-        factor = part.drive.factor
-        terms = ((factor, scale * linear), (_product(factor, factor), scale * square))
-        phases.append(DrivenPhase(part.box, terms))
+        linear, square = _gradient_terms(hamiltonian, part, kappa)
+        factor = _scaled(part.drive.factor, scale)
+        terms += [
+            (part, factor, part.values),
+            (part, factor, linear),
+            (part, _scaled(_product(part.drive.factor, part.drive.factor), scale), square),
+        ]
         for other in parts[:i]:
             box = tuple(
                 slice(max(a.start, b.start), min(a.stop, b.stop))
@@ -99,12 +144,38 @@ def gradient_kick(
                         * landscape.driven_gradient(part, axis)[_within(box, part.box)]
                         * landscape.driven_gradient(other, axis)[_within(box, other.box)]
                     )
-                term = (_product(factor, other.drive.factor), scale * cross)
-                phases.append(DrivenPhase(box, (term,)))
-    return Kick(psi, phase_factor(angle, blocks), phases)
+                both = _product(part.drive.factor, other.drive.factor)
+                crossed.append(DrivenPhase(box, ((_scaled(both, scale), cross),)))
+    return Kick(psi, static, [*_phases(landscape, always, terms), *crossed])
 
 
-def _product(a: Callable[[float], float], b: Callable[[float], float]) -> Callable[[float], float]:
+def _gradient_terms(
+    hamiltonian: Hamiltonian, part: DrivenPart, kappa: float
+) -> tuple[SmallArray, SmallArray]:
+    """Return what the correction adds to f(t) and to f(t)^2 [energy], inside the part's box.
+
+    In single precision: the correction is of order dt^2, its rounding far below
+    that of the phases it joins.
+    """
+    landscape = hamiltonian.landscape
+    linear = np.zeros(part.values.shape, dtype=np.float32)
+    square = np.zeros(part.values.shape, dtype=np.float32)
+    first = part.box[0].start
+    for rows in landscape.blocks():
+        start, stop = max(rows.start, first), min(rows.stop, part.box[0].stop)
+        if start >= stop:
+            continue
+        inside = slice(start - first, stop - first)
+        across = (slice(None), *part.box[1:])
+        for axis in range(hamiltonian.grid.ndim):
+            own = landscape.piece_gradient(part.piece, axis, slice(start, stop))[across]
+            rest = landscape.static_gradient(axis, slice(start, stop))[across]
+            linear[inside] -= 2 * kappa * own * rest
+            square[inside] -= kappa * own**2
+    return linear, square
+
+
+def _product(a: Factor, b: Factor) -> Factor:
     return lambda t: a(t) * b(t)
 
 

@@ -8,7 +8,7 @@ repeats its bits.
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Protocol
+from typing import Protocol, TypeAlias
 
 import numpy as np
 
@@ -19,16 +19,33 @@ from wavepack.stepping.kick import Kick
 from wavepack.stepping.tally import Tally
 
 
+#: Writes a state into the array it is given.
+Fill: TypeAlias = Callable[[ComplexArray], None]
+
+
+def leave_empty(psi: ComplexArray) -> None:
+    """Leave the array as it is, to be filled later."""
+    del psi
+
+
 class Scheme(Protocol):
     """A frozen description of a propagator; `bind` makes its stepper."""
 
     def bind(
-        self, hamiltonian: Hamiltonian, dt: float, *, threads: int = 1, reference: float = 0.0
+        self,
+        hamiltonian: Hamiltonian,
+        dt: float,
+        *,
+        threads: int = 1,
+        reference: float = 0.0,
+        fill: Fill = leave_empty,
     ) -> "Stepper":
         """Return the machinery for one Hamiltonian and step.
 
         ``reference`` is an energy [energy] near that of the state, for schemes
-        whose error grows away from their zero of energy.
+        whose error grows away from their zero of energy. ``fill`` writes the
+        first state into the array; it is called before phases are built, so
+        that the caller can let go of its own copy.
         """
         ...
 

@@ -26,7 +26,7 @@ from wavepack.grid.spectral import TransformPair, empty_field
 from wavepack.physics.hamiltonian import Hamiltonian
 from wavepack.physics.kinetic import SpectralKinetic
 from wavepack.stepping.outer import damping_of_half_step, gradient_kick, outer_kicks
-from wavepack.stepping.scheme import Clock, Stepper
+from wavepack.stepping.scheme import Clock, Fill, Stepper, leave_empty
 from wavepack.stepping.tally import Tally
 
 
@@ -37,7 +37,13 @@ class SplitOperator:
     order: Literal[2, 4] = 2
 
     def bind(
-        self, hamiltonian: Hamiltonian, dt: float, *, threads: int = 1, reference: float = 0.0
+        self,
+        hamiltonian: Hamiltonian,
+        dt: float,
+        *,
+        threads: int = 1,
+        reference: float = 0.0,
+        fill: Fill = leave_empty,
     ) -> Stepper:
         """Return the stepper; the reference energy is not needed here.
 
@@ -52,6 +58,7 @@ class SplitOperator:
             raise TypeError("the split operator needs the spectral kinetic operator")
         psi = empty_field(hamiltonian.grid.shape)
         pair = TransformPair(hamiltonian.grid, psi, threads)
+        fill(psi)
         blocks = Blocks(psi.shape, threads)
         damping = damping_of_half_step(hamiltonian, dt)
         tally = Tally(psi, hamiltonian.grid, damping, buffered=blocks.single)

@@ -53,7 +53,8 @@ class Tally:
         self._once = [np.zeros(shape) for shape in shapes]
         self._twice = [np.zeros(shape) for shape in shapes]
         cells = sum(int(np.prod(shape)) for shape in shapes)
-        self._losses = [self._loss(box) for box in self.boxes]
+        # Kept where they are small and asked for often.
+        self._losses = [self._loss(box) for box in self.boxes] if buffered else []
         self._buffers: list[ComplexArray] = []
         self._filled = 0
         if buffered and cells:
@@ -86,10 +87,11 @@ class Tally:
 
     def patches(self) -> list[Patch]:
         """Return the probability removed so far, box by box of absorbing cells."""
+        losses = self._losses or [self._loss(box) for box in self.boxes]
         return [
-            Patch(box, once * (loss * self._grid.cell) + twice * (fused * self._grid.cell))
+            Patch(box, self._grid.cell * (once * loss + twice * fused))
             for box, once, twice, (loss, fused) in zip(
-                self.boxes, self._once, self._twice, self._losses, strict=True
+                self.boxes, self._once, self._twice, losses, strict=True
             )
         ]
 
