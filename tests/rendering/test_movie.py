@@ -11,6 +11,7 @@ import pytest
 from PIL import Image
 
 from wavepack.errors import MachineError, UsageError
+from wavepack.rendering import movie
 from wavepack.rendering.frames import picture_of
 from wavepack.rendering.movie import write_movie
 from wavepack.rendering.scene import Curves, Frames, Scene
@@ -140,6 +141,25 @@ def test_a_failing_frame_leaves_nothing_behind(line: MakeCase, tmp_path: Path, e
         write_movie(scene, Frames(frames.times, read), out, size=SIZE)
     assert out.read_text() == "the old one"
     assert list(tmp_path.iterdir()) == [out]
+
+
+@pytest.mark.parametrize("ending", [".mp4", ".webm", ".gif"])
+def test_a_movie_cut_short_is_not_published(
+    line: MakeCase, tmp_path: Path, monkeypatch: pytest.MonkeyPatch, ending: str
+) -> None:
+    """What an encoder calls done is read back, and goes if half of it is missing."""
+    scene, frames, _ = line(128, 12)
+    encode = movie._encode  # noqa: SLF001 - no file system loses writes on demand
+
+    def lose_half(path: Path, *rest: Any) -> None:  # noqa: ANN401 - passed on
+        encode(path, *rest)
+        with path.open("r+b") as file:
+            file.truncate(path.stat().st_size // 2)
+
+    monkeypatch.setattr(movie, "_encode", lose_half)
+    with pytest.raises(MachineError, match="of 12 frames could be read back"):
+        write_movie(scene, frames, tmp_path / f"m{ending}", size=SIZE)
+    assert list(tmp_path.iterdir()) == []
 
 
 def test_a_full_disk_is_the_machines_fault(line: MakeCase, tmp_path: Path) -> None:

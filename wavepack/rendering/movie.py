@@ -9,6 +9,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Final, TypeAlias, cast
 
 import av
+import imageio.v3 as imageio
 from av.container import OutputContainer
 from av.video.stream import VideoStream
 
@@ -131,6 +132,12 @@ def write_movie(
     palette = _palette_of(drawn, frames) if form.codec == "gif" else None
     with _temporary(out) as partial:
         _encode(partial, form, drawn, frames, size, _rate(fps), scene.title, palette, progress)
+        found = _readable_frames(partial, form, size)
+        if found != len(frames):
+            raise MachineError(
+                f"{out}: only {found} of {len(frames)} frames could be read back; see that the "
+                "disk is neither full nor failing, and render it again"
+            )
     return out
 
 
@@ -203,6 +210,20 @@ def _encode(
             if progress is not None:
                 progress(i + 1, len(frames))
         container.mux(stream.encode())
+
+
+def _readable_frames(path: Path, form: Format, size: tuple[int, int]) -> int:
+    """Return how many pictures of the right size another reader finds in a movie.
+
+    An encoder may report success on a file that was cut short; no movie takes
+    its name before it has been read whole.
+    """
+    found = 0
+    pictures = imageio.imiter(path, plugin="pillow" if form.codec == "gif" else "pyav")
+    with contextlib.suppress(OSError, SyntaxError, av.FFmpegError):
+        for pixels in pictures:
+            found += pixels.shape[:2] == size[::-1]
+    return found
 
 
 #: BT.709 primaries, transfer and matrix with limited range, in the codec's numbers.
