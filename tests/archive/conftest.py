@@ -53,6 +53,7 @@ def append_row(writer: RunWriter, row: int) -> None:
     writer.append_detector("exit", [row, row + 0.5], [row + 1, row + 2])
     writer.append_detector("plain", row, row + 3)
     writer.append_frame(row, frame_of(row))
+    writer.flush()
 
 
 @pytest.fixture

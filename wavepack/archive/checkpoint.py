@@ -1,29 +1,30 @@
 """All that a resumed run needs, in one file that is whole or not there.
 
-The file is built in memory and written by the plain calls of the operating
-system, whose errors cannot get lost inside HDF5; it is read back and compared
-before it takes the place of the one before, which is kept beside it.
+HDF5 may swallow an error of the operating system. So the file is written aside,
+read back and compared, array by array, and sealed with a checksum before it
+takes the place of the one before, which is kept beside it. Large arrays go
+straight from the field to the file: no second copy of them is made.
 """
 
 import hashlib
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
-from io import BytesIO
+from io import SEEK_END
 from pathlib import Path
-from typing import Any, Final, TypeAlias
+from typing import Any, BinaryIO, Final, TypeAlias
 
 import h5py
 import numpy as np
 import numpy.typing as npt
 
-from wavepack.archive.disk import machine_errors, write_atomically
+from wavepack.archive.disk import machine_errors, replace_atomically
 from wavepack.archive.layout import PREVIOUS_CHECKPOINT_FILE, SCHEMA_VERSION
 from wavepack.errors import MachineError, UsageError
 
 Value: TypeAlias = npt.NDArray[Any] | np.generic | bytes | str | bool | int | float
 
-#: Growing the image in memory in small blocks would copy it again and again.
-IMAGE_BLOCK: Final = 2**22
+#: Bytes compared, or put under the seal, at once.
+PIECE: Final = 2**20
 SEAL: Final = b"\nsha256:"
 SEAL_BYTES: Final = len(SEAL) + 64
 
@@ -41,6 +42,9 @@ class Checkpoint:
         start = f"{prefix}/"
         found = self.state.items()
         return {key.removeprefix(start): value for key, value in found if key.startswith(start)}
+
+
+Stored: TypeAlias = Mapping[str, tuple[str, npt.NDArray[Any]]]
 
 
 class _Damaged(Exception):  # noqa: N818 - never leaves this module
@@ -67,9 +71,18 @@ def save(path: Path, state: Mapping[str, Value]) -> None:
         If the disk is full, not writable, or did not keep what was written.
     """
     path = Path(path)
-    image = _image(state)
-    content = image + _seal(image)
-    write_atomically(path, content, previous=path.with_name(PREVIOUS_CHECKPOINT_FILE))
+    stored = {key: _stored(key, value) for key, value in state.items()}
+    size = sum(array.nbytes for _, array in stored.values())
+
+    def write(file: BinaryIO) -> None:
+        _write_image(file, stored)
+        file.seek(0)
+        seal = _seal(file)
+        file.seek(0, SEEK_END)
+        file.write(seal)
+
+    previous = path.with_name(PREVIOUS_CHECKPOINT_FILE)
+    replace_atomically(path, size, write, lambda copy: _holds(copy, stored), previous)
 
 
 def load(path: Path) -> Checkpoint:
@@ -101,39 +114,66 @@ def load(path: Path) -> Checkpoint:
     raise MachineError(f"{path.parent}: {'; '.join(faults)}: no checkpoint to resume from")
 
 
-def _image(state: Mapping[str, Value]) -> bytes:
-    """Return the bytes of an HDF5 file that holds the state."""
-    stored = {key: _stored(key, value) for key, value in state.items()}
-    options = {"driver": "core", "backing_store": False, "block_size": IMAGE_BLOCK}
-    with h5py.File("image", "w", libver="earliest", **options) as file:
-        file.attrs["schema_version"] = SCHEMA_VERSION
+def _write_image(file: BinaryIO, stored: Stored) -> None:
+    """Write an HDF5 file that holds the state."""
+    with h5py.File(file, "w", libver="earliest") as image:
+        image.attrs["schema_version"] = SCHEMA_VERSION
         for key, (kind, array) in stored.items():
             try:
-                dataset = file.create_dataset(key, data=array)
-            except (ValueError, OSError, TypeError) as error:
+                dataset = image.create_dataset(key, data=array)
+            except (ValueError, TypeError) as error:
                 raise ValueError(f"checkpoint: key {key!r} cannot be used: {error}") from error
             dataset.attrs["kind"] = kind
-        file.flush()
-        image: bytes = file.id.get_file_image()
-    return image
 
 
-def _seal(image: bytes) -> bytes:
+def _holds(path: Path, stored: Stored) -> bool:
+    """Whether a file returns every array, bit for bit, compared in pieces."""
+    try:
+        with h5py.File(path, "r", locking=False) as file:
+            return all(
+                np.array_equal(_bits(np.asarray(file[key][rows])), _bits(array[rows]))
+                for key, (_, array) in stored.items()
+                for rows in _pieces(array)
+            )
+    except (KeyError, RuntimeError):
+        return False
+
+
+def _bits(array: npt.NDArray[Any]) -> npt.NDArray[np.uint8]:
+    return np.ascontiguousarray(array).reshape(-1).view(np.uint8)
+
+
+def _pieces(array: npt.NDArray[Any]) -> Iterator[tuple[slice, ...]]:
+    """Cut an array into runs of rows of bounded size."""
+    if array.ndim == 0:
+        yield ()
+        return
+    rows = max(1, PIECE // max(1, array[:1].nbytes))
+    for first in range(0, max(1, array.shape[0]), rows):
+        yield (slice(first, first + rows),)
+
+
+def _seal(file: BinaryIO, size: int | None = None) -> bytes:
     """Return the checksum that follows an image; HDF5 does not look past its own end.
 
     It covers every byte, so that damage is found before HDF5, which may not
-    survive it, reads any.
+    survive it, reads any. With a size only so many bytes are covered.
     """
-    return SEAL + hashlib.sha256(image).hexdigest().encode()
+    checksum = hashlib.sha256()
+    left = size if size is not None else 2**63
+    while left > 0 and (piece := file.read(min(PIECE, left))):
+        checksum.update(piece)
+        left -= len(piece)
+    return SEAL + checksum.hexdigest().encode()
 
 
 def _read(path: Path) -> dict[str, Any]:
-    with machine_errors(path, path.parent):
-        content = path.read_bytes()
-    image, seal = content[:-SEAL_BYTES], content[-SEAL_BYTES:]
-    if seal != _seal(image):
-        raise _Damaged("its checksum does not fit")
-    with h5py.File(BytesIO(image), "r") as file:
+    with machine_errors(path, path.parent), path.open("rb") as file:
+        size = max(0, path.stat().st_size - SEAL_BYTES)
+        expected = _seal(file, size)
+        if file.read() != expected:
+            raise _Damaged("its checksum does not fit")
+    with h5py.File(path, "r", locking=False) as file:
         _check_version(file, path)
         return {key: _restored(kind, array) for key, (kind, array) in _datasets(file)}
 

@@ -3,10 +3,10 @@
 import os
 import re
 import shutil
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
-from typing import Final
+from typing import BinaryIO, Final
 
 from wavepack.archive.layout import CHECKPOINT_FILE
 from wavepack.errors import MachineError
@@ -78,16 +78,43 @@ def write_atomically(path: Path, content: bytes, previous: Path | None = None) -
         If the disk is full, the folder cannot be written, or the disk does
         not return what was written.
     """
+    def write(file: BinaryIO) -> None:
+        left = memoryview(content)
+        while left:
+            left = left[file.write(left) :]
+
+    def proven(temporary: Path) -> bool:
+        return temporary.read_bytes() == content
+
+    replace_atomically(path, len(content), write, proven, previous)
+
+
+def replace_atomically(
+    path: Path,
+    size: int,
+    write: Callable[[BinaryIO], None],
+    proven: Callable[[Path], bool],
+    previous: Path | None = None,
+) -> None:
+    """Replace a file by what ``write`` puts into a new one, once that is ``proven``.
+
+    ``size`` is about how many bytes there will be. See `write_atomically`.
+
+    Raises
+    ------
+    MachineError
+        If the disk is full, the folder cannot be written, or the file is not
+        proven to hold what was written.
+    """
     require_folder(path.parent)
-    require_space(path.parent, len(content), reserve=0)
+    require_space(path.parent, size, reserve=0)
     temporary = path.with_name(f".{path.name}.{os.getpid()}.partial")
     with machine_errors(path, path.parent):
         try:
-            with temporary.open("wb") as file:
-                file.write(content)
-                file.flush()
+            with temporary.open("w+b", buffering=0) as file:
+                write(file)
                 os.fsync(file.fileno())
-            if temporary.read_bytes() != content:
+            if not proven(temporary):
                 raise MachineError(f"{path}: the disk did not return what was written to it")
             if previous is not None and path.exists():
                 _keep_as(path, previous)
