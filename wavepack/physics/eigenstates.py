@@ -26,8 +26,10 @@ from wavepack.physics.kinetic import StaggeredKinetic, link_positions
 from wavepack.physics.particle import Particle
 from wavepack.physics.shapes import Piece
 
-#: Up to so many points all states are found at once.
+#: Up to so many points all states are found at once,
 DENSE_POINTS: Final = 400
+#: and up to so many a state: Davidson's method is slow to tell many levels apart.
+DENSE_POINTS_A_STATE: Final = 60
 #: Trial states beyond those wanted: they keep close levels from being missed.
 GUARDS: Final = 3
 #: Largest residual of a state, relative to its energy above the lowest V.
@@ -83,7 +85,7 @@ def lowest_states(
     if not np.isfinite(potential).all():
         raise ValueError("need a finite potential for bound states")
     apply = _hamiltonian(grid, potential, particle, kinetic)
-    if grid.size <= max(DENSE_POINTS, 4 * (count + GUARDS)):
+    if grid.size <= max(DENSE_POINTS, DENSE_POINTS_A_STATE * count):
         matrix = apply(np.eye(grid.size))
         energies, vectors = scipy.linalg.eigh(
             (matrix + matrix.T) / 2, subset_by_index=(0, count - 1)
