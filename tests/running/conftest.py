@@ -74,7 +74,7 @@ def contents(folder: Path) -> dict[str, str]:
 
 @pytest.fixture
 def folder(tmp_path: Path) -> Path:
-    """An empty folder for a run."""
+    """Return an empty folder for a run."""
     path = tmp_path / "run"
     path.mkdir()
     return path

@@ -162,7 +162,7 @@ def test_a_norm_that_grows_stops_the_run(folder: Path) -> None:
     """More probability than there was at the start is a fault."""
     with Session.start(small(), folder) as session:
         session._stepper.psi[:] *= 1.1  # noqa: SLF001 - the fault has to come from somewhere
-        with pytest.raises(NumericalFault, match="norm has grown to 1.21"):
+        with pytest.raises(NumericalFault, match=r"norm has grown to 1\.21"):
             session.propagate()
 
 

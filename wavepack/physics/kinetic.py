@@ -20,7 +20,6 @@ from wavepack.grid.axis import Axis
 from wavepack.grid.grid import Grid
 from wavepack.physics.particle import Particle
 
-
 #: Points of the lines whose energy is summed at once.
 BLOCK_POINTS = 1 << 16
 

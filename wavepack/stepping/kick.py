@@ -2,14 +2,13 @@ r"""The factor :math:`e^{-i\phi(x,t)}` of a real potential, with the layers' dam
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from typing import TypeAlias
+from typing import Any, TypeAlias
 
 import numpy as np
 import numpy.typing as npt
 
 from wavepack.arrays import ComplexArray, RealArray
 from wavepack.grid.blocks import Blocks
-
 
 #: Values that need no more than single precision.
 SmallArray: TypeAlias = npt.NDArray[np.float32]
@@ -61,7 +60,7 @@ class Kick:
 
     def _turn(self, phase: DrivenPhase, first: int, last: int, time: float) -> None:
         start = phase.box[0].start
-        angle: RealArray | None = None
+        angle: npt.NDArray[np.floating[Any]] | None = None
         for factor, values in phase.terms:
             strength = factor(time)
             if strength == 0.0:

@@ -29,16 +29,18 @@ def outer_kicks(
     scale = share * duration / hamiltonian.particle.hbar
     landscape = hamiltonian.landscape
     parts = landscape.driven if share else ()
-    shapes = [
-        hamiltonian.grid.along(d, i) for i, d in enumerate(damping) if np.any(d < 1)
-    ]
+    shapes = [hamiltonian.grid.along(d, i) for i, d in enumerate(damping) if np.any(d < 1)]
+    single: Sequence[ComplexArray | RealArray]
+    fused: Sequence[ComplexArray | RealArray]
+    always: list[Term]
     if any(landscape.everywhere(part) for part in parts):
         # The phase is computed anew at every point anyhow: the static part joins it.
         single, fused = shapes, [d * d for d in shapes]
         always = [(_constant(scale), landscape.static)]
     else:
         factor: ComplexArray | RealArray = (
-            phase_factor(landscape.static, scale, blocks) if share
+            phase_factor(landscape.static, scale, blocks)
+            if share
             else np.ones(hamiltonian.grid.shape)
         )
         for d in shapes:
@@ -48,9 +50,10 @@ def outer_kicks(
         single, fused = [factor], [factor * factor] if blocks.single else [factor, factor]
         always = []
     terms = [(part, _scaled(part.drive.factor, scale), part.values) for part in parts]
+    twice = [(part, _scaled(factor_in_time, 2), values) for part, factor_in_time, values in terms]
     return Kicks(
         Kick(psi, single, _phases(landscape, always, terms)),
-        Kick(psi, fused, _phases(landscape, _twice(always), [(p, _scaled(f, 2), v) for p, f, v in terms])),
+        Kick(psi, fused, _phases(landscape, _twice(always), twice)),
     )
 
 

@@ -18,7 +18,6 @@ from wavepack.physics.hamiltonian import Hamiltonian
 from wavepack.stepping.kick import Kick
 from wavepack.stepping.tally import Tally
 
-
 #: Writes a state into the array it is given.
 Fill: TypeAlias = Callable[[ComplexArray], None]
 
