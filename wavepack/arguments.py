@@ -60,7 +60,10 @@ def build() -> tuple[Parser, dict[str, Parser]]:
     )
     parser.add_argument("--version", action="version", version=f"{PROGRAM} {__version__}")
     group = parser.add_subparsers(
-        dest="command", metavar="COMMAND", required=True, parser_class=Parser,
+        dest="command",
+        metavar="COMMAND",
+        required=True,
+        parser_class=Parser,
         title="commands (each has its own --help)",
     )
     commands: dict[str, Parser] = {}
@@ -76,41 +79,59 @@ def build() -> tuple[Parser, dict[str, Parser]]:
         )
         return commands[name]
 
-    _add_check(command(
-        "check", "validate a scenario and forecast accuracy, memory, disk and time",
-        "Tells whether grid, step, box and absorbers suit the packet and the potential.\n"
-        "Nothing is propagated but a few steps to time them, 5 s at most.",
-        "scenarios/one-barrier.toml",
-    ))
-    _add_run(command(
-        "run", "propagate a scenario into a run folder and print the results",
-        "An interrupted run (Ctrl-C) saves a checkpoint and can be resumed.",
-        'scenarios/one-barrier.toml --set packet.energy="80 meV" --out runs/low',
-    ))
-    _add_resume(command(
-        "resume", "go on with a run from its newest checkpoint",
-        "The result is the one of an unbroken run.",
-        'runs/one-barrier --until "2 ps"',
-    ))
-    _add_results(command(
-        "results", "print the results of a run",
-        "A table by default. --csv gives the columns name,value,error,unit: one line a\n"
-        "quantity, the name being its path in results.json, such as\n"
-        "quantities.transmission; what is not established is left empty. Spectra are in\n"
-        "--json and in run.h5.",
-        "runs/one-barrier --csv",
-    ))
-    _add_movie(command(
-        "movie", "render the stored frames of a run to a movie",
-        "The ending of the file chooses H.264 (.mp4), VP9 (.webm) or .gif.",
-        "runs/one-barrier --out barrier.webm --size 1920x1080 --fps 30",
-    ))
-    _folder(command(
-        "report", "write report.html, one self-contained page about a run",
-        "Results, figures, numerics, provenance and the scenario. The figures are also\n"
-        "kept as files in the run folder's figures/.",
-        "runs/one-barrier",
-    ))
+    _add_check(
+        command(
+            "check",
+            "validate a scenario and forecast accuracy, memory, disk and time",
+            "Tells whether grid, step, box and absorbers suit the packet and the potential.\n"
+            "Nothing is propagated but a few steps to time them, 5 s at most.",
+            "scenarios/one-barrier.toml",
+        )
+    )
+    _add_run(
+        command(
+            "run",
+            "propagate a scenario into a run folder and print the results",
+            "An interrupted run (Ctrl-C) saves a checkpoint and can be resumed.",
+            'scenarios/one-barrier.toml --set packet.energy="80 meV" --out runs/low',
+        )
+    )
+    _add_resume(
+        command(
+            "resume",
+            "go on with a run from its newest checkpoint",
+            "The result is the one of an unbroken run.",
+            'runs/one-barrier --until "2 ps"',
+        )
+    )
+    _add_results(
+        command(
+            "results",
+            "print the results of a run",
+            "A table by default. --csv gives the columns name,value,error,unit: one line a\n"
+            "quantity, the name being its path in results.json, such as\n"
+            "quantities.transmission; what is not established is left empty. Spectra are in\n"
+            "--json and in run.h5.",
+            "runs/one-barrier --csv",
+        )
+    )
+    _add_movie(
+        command(
+            "movie",
+            "render the stored frames of a run to a movie",
+            "The ending of the file chooses H.264 (.mp4), VP9 (.webm) or .gif.",
+            "runs/one-barrier --out barrier.webm --size 1920x1080 --fps 30",
+        )
+    )
+    _folder(
+        command(
+            "report",
+            "write report.html, one self-contained page about a run",
+            "Results, figures, numerics, provenance and the scenario. The figures are also\n"
+            "kept as files in the run folder's figures/.",
+            "runs/one-barrier",
+        )
+    )
     return parser, commands
 
 
@@ -124,12 +145,15 @@ def _add_check(parser: Parser) -> None:
 def _add_run(parser: Parser) -> None:
     _scenario(parser)
     parser.add_argument(
-        "--out", type=Path, metavar="DIR",
+        "--out",
+        type=Path,
+        metavar="DIR",
         help="the run folder (default: runs/ and the stem of the scenario's file)",
     )
     _threads(parser)
     parser.add_argument(
-        "--fresh", action="store_true",
+        "--fresh",
+        action="store_true",
         help="move a run that is in the folder aside first; nothing is deleted",
     )
     parser.add_argument(
@@ -140,7 +164,8 @@ def _add_run(parser: Parser) -> None:
 def _add_resume(parser: Parser) -> None:
     _folder(parser)
     parser.add_argument(
-        "--until", metavar="TIME",
+        "--until",
+        metavar="TIME",
         help='a new end, in the scenario\'s unit or with its own, such as "5 ps"',
     )
     _threads(parser)
@@ -169,7 +194,11 @@ def _add_movie(parser: Parser) -> None:
 def _scenario(parser: Parser) -> None:
     parser.add_argument("scenario", type=Path, metavar="SCENARIO", help="a TOML file")
     parser.add_argument(
-        "--set", action="append", default=[], metavar="KEY=VALUE", dest="overrides",
+        "--set",
+        action="append",
+        default=[],
+        metavar="KEY=VALUE",
+        dest="overrides",
         help='change one value of the scenario, such as packet.energy="80 meV"; repeatable',
     )
 
@@ -180,7 +209,9 @@ def _folder(parser: Parser) -> None:
 
 def _threads(parser: Parser) -> None:
     parser.add_argument(
-        "--threads", type=_count, metavar="N",
+        "--threads",
+        type=_count,
+        metavar="N",
         help="threads of the transforms (default: suited to grid and machine)",
     )
 

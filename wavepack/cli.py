@@ -108,7 +108,11 @@ def _run(asked: Namespace) -> int:
     out = asked.out or workflow.default_folder(scenario)
     with _line() as line:
         found = workflow.run(
-            scenario, out, threads=asked.threads, fresh=asked.fresh, note=_say,
+            scenario,
+            out,
+            threads=asked.threads,
+            fresh=asked.fresh,
+            note=_say,
             tell=lambda news: line.draw(progress_text(news, scenario.units.time)),
         )
     status = _conclude(found, str(out), workflow.misses(found, scenario))
@@ -123,7 +127,10 @@ def _resume(asked: Namespace) -> int:
     unit = workflow.scenario_of(asked.folder).units.time
     with _line() as line:
         found = workflow.resume(
-            asked.folder, until=asked.until, threads=asked.threads, note=_say,
+            asked.folder,
+            until=asked.until,
+            threads=asked.threads,
+            note=_say,
             tell=lambda news: line.draw(progress_text(news, unit)),
         )
     missed = workflow.misses(found, workflow.scenario_of(asked.folder))

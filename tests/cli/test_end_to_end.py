@@ -29,7 +29,11 @@ def copied(finished: Path, tmp_path: Path) -> Path:
 def test_run_fills_its_folder(finished: Path) -> None:
     """The run folder holds what it should; the table is on stdout, messages on stderr."""
     assert {path.name for path in (finished / RUN).iterdir()} >= {
-        "scenario.toml", "run.h5", "checkpoint.h5", "results.json", "run.log",
+        "scenario.toml",
+        "run.h5",
+        "checkpoint.h5",
+        "results.json",
+        "run.log",
     }
     table = (finished / "stdout.txt").read_text()
     assert table.startswith("One <barrier> & a wire\nfinished at t = 200 fs, 400 steps")
@@ -117,8 +121,12 @@ def test_interrupt_and_resume(
     (tmp_path / "wire.toml").write_text(SCENARIO)
     command = [sys.executable, "-m", "wavepack", "run", "wire.toml", "--set", "time.end=1e6"]
     with subprocess.Popen(
-        command, cwd=tmp_path, env=environment, text=True,
-        stdout=subprocess.PIPE, stderr=subprocess.PIPE,
+        command,
+        cwd=tmp_path,
+        env=environment,
+        text=True,
+        stdout=subprocess.PIPE,
+        stderr=subprocess.PIPE,
     ) as process:
         log = tmp_path / RUN / "run.log"
         wait_for(lambda: log.is_file() and '"checkpoint"' in log.read_text())
@@ -157,9 +165,7 @@ def test_check_forecasts(finished: Path, call: Call) -> None:
     assert done.status == 0, done.err
     assert "memory" in done.out
     assert "duration" not in done.out
-    hard = call(
-        "check", "wire.toml", "--no-timing", "--set", "accuracy.target=1e-9", cwd=finished
-    )
+    hard = call("check", "wire.toml", "--no-timing", "--set", "accuracy.target=1e-9", cwd=finished)
     assert hard.status == 3
     faulty = call("check", "wire.toml", "--set", "grid.x.pionts=9", cwd=finished)
     assert faulty.status == 2
@@ -211,9 +217,7 @@ def test_faulty_scenario(call: Call, tmp_path: Path) -> None:
     ],
     ids=str,
 )
-def test_no_run_folder(
-    arguments: tuple[str, ...], said: str, call: Call, tmp_path: Path
-) -> None:
+def test_no_run_folder(arguments: tuple[str, ...], said: str, call: Call, tmp_path: Path) -> None:
     """What is no run folder, no scenario or no movie is bad input, before any work."""
     (tmp_path / "wire.toml").write_text(SCENARIO)
     done = call(*arguments, cwd=tmp_path)

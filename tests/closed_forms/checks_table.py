@@ -85,8 +85,13 @@ _LIST: Final = (
     Check("P10", "prepared energy", 5e-5, _EDGE + ", times the height of the walls"),
     Check("P10", "rate", 3e-3, "physics: the line is not exactly Lorentzian", relative=True),
     Check("P10", "rate of survival", 3e-3, "the same", relative=True),
-    Check("P11", "energy", 1e-5, "method: V is not even at the wall, so the sine basis converges "
-          "as a power; the decay holds the broad resonance e^(-1.1 t) until t = 20"),
+    Check(
+        "P11",
+        "energy",
+        1e-5,
+        "method: V is not even at the wall, so the sine basis converges "
+        "as a power; the decay holds the broad resonance e^(-1.1 t) until t = 20",
+    ),
     Check("P11", "width", 3e-6, "the same"),
     # Splitting turns the trap at arcsin(omega dt/2) 2/dt; 1 + (omega dt)^2/24 is 2.4e-8.
     Check("P12", "mean by split-operator 2", 5e-6, "method: amplitude 20 nm times (omega dt)^2/8"),
@@ -95,13 +100,23 @@ _LIST: Final = (
     Check("P12", "mean by split-operator 4", 5e-9, "method: amplitude times (omega dt)^4/200"),
     Check("P12", "width by split-operator 4", 5e-9, "the same"),
     Check("P12", "autocorrelation by split-operator 4", 1e-9, "the same"),
-    Check("P12", "mean by crank-nicolson", 2e-3, "method: 3 (k dx)^4/128 of the speed of a packet "
-          "with k up to 0.7/nm at 0.65 nm, and (E dt)^2/12 hbar^2"),
+    Check(
+        "P12",
+        "mean by crank-nicolson",
+        2e-3,
+        "method: 3 (k dx)^4/128 of the speed of a packet "
+        "with k up to 0.7/nm at 0.65 nm, and (E dt)^2/12 hbar^2",
+    ),
     Check("P12", "width by crank-nicolson", 1e-3, "the same"),
     Check("P12", "autocorrelation by crank-nicolson", 1e-4, "the same"),
     Check("P13", "level", 1e-8, "the table's last digit"),
-    Check("P14", "level, record of 500", 2.5e-5, "a window of exp(-5 t^2/T^2): neighbours "
-          "0.029 away leave exp(-(0.029 T)^2/20) of their weight"),
+    Check(
+        "P14",
+        "level, record of 500",
+        2.5e-5,
+        "a window of exp(-5 t^2/T^2): neighbours "
+        "0.029 away leave exp(-(0.029 T)^2/20) of their weight",
+    ),
     Check("P14", "level, record of 2000", 5e-6, "round-off of the phase, order 4 in the step"),
     Check("P15", "level", 1e-8, "the table's last digit"),
     Check("P18", "sidebands of a packet", 2e-4, _EDGE + "; flux between the bands"),

@@ -138,9 +138,7 @@ def propagate(text: str, *overrides: str) -> Outcome:
         setup.choices, setup.incidents(), setup.central_energy(), found, before, 1, b"", ""
     )
     memory = Memory()
-    journal = Journal(
-        setup, stepper, Overlap.of(start, setup.grid.cell), cast("RunWriter", memory)
-    )
+    journal = Journal(setup, stepper, Overlap.of(start, setup.grid.cell), cast("RunWriter", memory))
     schedule = setup.schedule()
     snapshot = Snapshot(0, 0.0, stepper.psi)
     for snapshot in march(stepper, schedule):

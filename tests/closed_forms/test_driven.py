@@ -94,9 +94,7 @@ def test_oscillating_region(
     assert outcome.results["detectors"]["exit"]["transmission"] is None
     found = weights(outcome)
     c = outcome.setup.particle.stiffness
-    wanted = averaged(
-        outcome, lambda e: exact.oscillating_region(e, amplitude, quantum, length, c)
-    )
+    wanted = averaged(outcome, lambda e: exact.oscillating_region(e, amplitude, quantum, length, c))
     orders = range(-3, 4)
     agree("P18 sidebands of a packet", [found[n] for n in orders], [wanted[n] for n in orders])
     table = {row.parameters["order"]: row.value for row in rows("P18", "sideband")

@@ -131,8 +131,12 @@ def test_free_packet_by_differences(space_order: int) -> None:
     lags = []
     for points in (1000, 2000):
         outcome = propagate(
-            LINE, f"grid.x.points={points}", 'propagator.method="crank-nicolson"',
-            f"propagator.space_order={space_order}", "propagator.step=0.02", "time.end=100.0",
+            LINE,
+            f"grid.x.points={points}",
+            'propagator.method="crank-nicolson"',
+            f"propagator.space_order={space_order}",
+            "propagator.step=0.02",
+            "time.end=100.0",
         )
         dx = outcome.setup.grid.axes[0].spacing
         predicted = shift_by_differences(dx, 0.02, space_order, outcome.setup.choices.reference)

@@ -127,9 +127,7 @@ def test_planes_across_either_axis() -> None:
 def test_links_lie_between_points() -> None:
     """One link a point on a periodic axis, one more between walls."""
     periodic, walls = line(8).axes[0], line(8, WALLS).axes[0]
-    assert link_positions(periodic) == pytest.approx(
-        periodic.coordinates + periodic.spacing / 2
-    )
+    assert link_positions(periodic) == pytest.approx(periodic.coordinates + periodic.spacing / 2)
     assert len(link_positions(walls)) == 9
     assert link_positions(walls)[0] == pytest.approx(walls.spacing / 2)
     assert slope_matrix(walls, 4).shape == (9, 8)

@@ -47,9 +47,19 @@ def test_page_is_complete(results: Results) -> None:
     """Title, quantities, numerics, provenance, scenario, limits and caution are there."""
     text = Page(page(results, 'title = "One barrier"\n', [(PNG, "Overview")], ["No frame."])).text
     for words in (
-        "One barrier", "finished at t = 1200 fs", "0.1262346", "3.1e-06", "Detector exit",
-        "crank-nicolson", "numpy 2.0", 'title = "One barrier"', "Overview", "No frame.",
-        "600", LIMITS, CAUTION,
+        "One barrier",
+        "finished at t = 1200 fs",
+        "0.1262346",
+        "3.1e-06",
+        "Detector exit",
+        "crank-nicolson",
+        "numpy 2.0",
+        'title = "One barrier"',
+        "Overview",
+        "No frame.",
+        "600",
+        LIMITS,
+        CAUTION,
     ):
         assert words in text, words
 

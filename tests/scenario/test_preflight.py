@@ -233,7 +233,8 @@ def test_driven_layer_is_noticed() -> None:
     """A driven piece that reaches into an absorber is said to."""
     culprit = row(
         look(
-            BARRIER, "potential.0.x={from=0.0, to=130.0}",
+            BARRIER,
+            "potential.0.x={from=0.0, to=130.0}",
             "potential.0.drive={photon_energy=0.01}",
         ),
         "V through it, x upper",
@@ -257,7 +258,9 @@ def test_crank_nicolson_has_no_resonance_but_a_dispersion() -> None:
     assert "grid_phase" not in found.quantities
     assert row(found, "error of the spacing").verdict == "bad"
     finer = look(
-        BARRIER, "propagator.method=crank-nicolson", "grid.x.points=600",
+        BARRIER,
+        "propagator.method=crank-nicolson",
+        "grid.x.points=600",
         "propagator.space_order=4",
     )
     assert finer.quantities["spacing_error"] < 0.6 * found.quantities["spacing_error"]
@@ -317,7 +320,10 @@ def test_disk_grows_with_frames() -> None:
     assert every == 100 * 1536 * 16
     few = disk(
         setup_of(
-            BARRIER, "output.frames=100", "output.thin=2", "output.store=density",
+            BARRIER,
+            "output.frames=100",
+            "output.thin=2",
+            "output.store=density",
             "output.precision=single",
         )
     ).frames

@@ -78,6 +78,7 @@ def write_atomically(path: Path, content: bytes, previous: Path | None = None) -
         If the disk is full, the folder cannot be written, or the disk does
         not return what was written.
     """
+
     def write(file: BinaryIO) -> None:
         left = memoryview(content)
         while left:

@@ -67,9 +67,7 @@ def sections(results: Mapping[str, Any]) -> tuple[Section, ...]:
         Section("Probabilities", _quantities(results.get("quantities", {}))),
         Section("Regions", _regions(results.get("regions", {}))),
         *(_detector(name, seen) for name, seen in results.get("detectors", {}).items()),
-        Section(
-            "Expectation values of what remains", _quantities(results.get("expectations", {}))
-        ),
+        Section("Expectation values of what remains", _quantities(results.get("expectations", {}))),
         _numerics(results.get("numerics", {}), with_detectors=bool(results.get("detectors"))),
     ]
     return tuple(section for section in found if section.rows or section.notes)

@@ -176,7 +176,13 @@ class Session:
             stepper = setup.bind(threads, setup.hand_over)
             knowledge = spectral.remember().text if setup.spectral else b""
         self._record = Record(
-            setup.choices, incidents, central, found, before, threads, knowledge,
+            setup.choices,
+            incidents,
+            central,
+            found,
+            before,
+            threads,
+            knowledge,
             spectral.planner_version(),
         )
         write_atomically(self.folder / SCENARIO_FILE, text.encode())

@@ -208,7 +208,10 @@ class Setup:
     def bind(self, threads: int, fill: Fill = leave_empty) -> Stepper:
         """Return the stepper; ``fill`` writes the state into its array."""
         return self.scheme.bind(
-            self.hamiltonian, self.dt, threads=threads, reference=self.choices.reference,
+            self.hamiltonian,
+            self.dt,
+            threads=threads,
+            reference=self.choices.reference,
             fill=fill,
         )
 

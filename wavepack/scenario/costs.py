@@ -153,14 +153,14 @@ def _measure(setup: Setup, grid: Grid, seconds: float) -> tuple[float, float]:
             SpectralKinetic(grid, setup.particle)
             if setup.spectral
             else StaggeredKinetic(
-                grid, setup.particle, (setup.particle.mass,) * grid.ndim,
+                grid,
+                setup.particle,
+                (setup.particle.mass,) * grid.ndim,
                 setup.scenario.propagator.space_order or 2,
             )
         )
     hamiltonian = Hamiltonian(kinetic, landscape, setup.hamiltonian.layers)
-    stepper = setup.scheme.bind(
-        hamiltonian, setup.dt, threads=1, reference=setup.choices.reference
-    )
+    stepper = setup.scheme.bind(hamiltonian, setup.dt, threads=1, reference=setup.choices.reference)
     # A wave of one modulus: no number gets so small that it slows arithmetic down.
     stepper.psi[...] = np.exp(1j * np.arange(grid.size).reshape(grid.shape))
     stepper.psi /= math.sqrt(grid.norm(stepper.psi))

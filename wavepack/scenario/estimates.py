@@ -374,8 +374,11 @@ class Estimates:
         worst = float(back[present].max()) if present.any() else 0.0
         total = max(float(weights.sum()), 1e-300)
         return LayerForecast(
-            layer, float(back @ weights), worst,
-            float(weights[back > GIVEN_BACK].sum()), float(energies @ weights) / total,
+            layer,
+            float(back @ weights),
+            worst,
+            float(weights[back > GIVEN_BACK].sum()),
+            float(energies @ weights) / total,
         )
 
     @cached_property

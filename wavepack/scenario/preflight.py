@@ -61,10 +61,13 @@ class CostSurvey(Survey):
         self.quantities |= {"memory_start": start, "memory_running": running}
         verdict = judged(start / free, (0.6, 1.0))
         return Row(
-            "memory", f"{size_text(start)} at the start, then {size_text(running)}",
-            f"free {size_text(free)}", verdict,
+            "memory",
+            f"{size_text(start)} at the start, then {size_text(running)}",
+            f"free {size_text(free)}",
+            verdict,
             f"take fewer points along {self._longest}, or another machine"
-            if verdict != "good" else "",
+            if verdict != "good"
+            else "",
         )
 
     def _disk(self, folder: Path | str) -> Row:
@@ -74,11 +77,13 @@ class CostSurvey(Survey):
         verdict = judged(size.total / free, (0.5, 1.0))
         frames = max(2, int(self.setup.scenario.output.frames * 0.4 * free / size.total))
         return Row(
-            "disk", f"{size_text(size.total)}, frames {size_text(size.frames)}",
-            f"free {size_text(free)}", verdict,
-            f"take output.frames = {frames} or fewer, output.thin, or "
-            'output.store = "density"'
-            if verdict != "good" else "",
+            "disk",
+            f"{size_text(size.total)}, frames {size_text(size.frames)}",
+            f"free {size_text(free)}",
+            verdict,
+            f'take output.frames = {frames} or fewer, output.thin, or output.store = "density"'
+            if verdict != "good"
+            else "",
         )
 
     def _duration(self) -> Row:
@@ -86,10 +91,13 @@ class CostSurvey(Survey):
         self.quantities |= {"step_seconds": measured.step, "seconds": measured.total}
         verdict = judged(measured.total, (2 * DAY, math.inf))
         return Row(
-            "duration", f"about {duration_text(measured.total)}",
-            f"{self.setup.steps} steps of {duration_text(measured.step)}", verdict,
+            "duration",
+            f"about {duration_text(measured.total)}",
+            f"{self.setup.steps} steps of {duration_text(measured.step)}",
+            verdict,
             "long; a smaller grid or a longer propagator.step saves time"
-            if verdict != "good" else "",
+            if verdict != "good"
+            else "",
         )
 
     def _accuracy(self) -> Iterator[Row]:

@@ -84,9 +84,7 @@ class Line:
         here = SLICES * nearest(self._axis.coordinates, self._setup.content.centre[0])
         return total[here:] if self._sign > 0 else total[here::-1]
 
-    def _transmission(
-        self, values: RealArray, thickness: float, kinetic: RealArray
-    ) -> RealArray:
+    def _transmission(self, values: RealArray, thickness: float, kinetic: RealArray) -> RealArray:
         """Return T at kinetic energies of the launch, from the first slice to the last."""
         energy = kinetic + values[0]
         k = np.sqrt((energy[:, None] - _trimmed(values)) / self._c + 0j)

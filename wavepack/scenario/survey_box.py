@@ -104,10 +104,14 @@ class BoxSurvey(Survey):
         self.quantities["start_in_layers"] = inside
         verdict = judged(inside, (STRAY, self.limits[0]))
         return Row(
-            "start clear of absorbers", f"{inside:.1g} inside", f"{STRAY:g}", verdict,
+            "start clear of absorbers",
+            f"{inside:.1g} inside",
+            f"{STRAY:g}",
+            verdict,
             "that much of the packet starts in an absorber and is lost at once; move "
             "packet.center away from it, make absorber.width smaller, or widen the grid"
-            if verdict != "good" else "",
+            if verdict != "good"
+            else "",
         )
 
     def _clear_of_potential(self) -> Row:
@@ -116,10 +120,15 @@ class BoxSurvey(Survey):
         self.quantities["start_on_potential"] = touching
         verdict = judged(touching, (1e-4, math.inf))
         return Row(
-            "start clear of the potential", f"{touching:.1g} on it", "1e-4", verdict,
+            "start clear of the potential",
+            f"{touching:.1g} on it",
+            "1e-4",
+            verdict,
             "the packet starts where V varies: its energy is not that of its momenta, and no "
             "transmission by energy can be given; move packet.center away or make "
-            "packet.sigma smaller" if verdict != "good" else "",
+            "packet.sigma smaller"
+            if verdict != "good"
+            else "",
         )
 
     def _transmitted(self) -> Iterator[Row]:
@@ -131,9 +140,14 @@ class BoxSurvey(Survey):
         verdict = judged(there, (self.limits[0] * 0.1, self.limits[1]))
         names = ", ".join(s.name for s in self.setup.scenario.region if s.role == "transmitted")
         yield Row(
-            "start not yet transmitted", f"{there:.1g}", f"{self.limits[0] * 0.1:.1g}", verdict,
+            "start not yet transmitted",
+            f"{there:.1g}",
+            f"{self.limits[0] * 0.1:.1g}",
+            verdict,
             f"that much starts in region {names} and counts as transmitted; move the region or "
-            "the packet" if verdict != "good" else "",
+            "the packet"
+            if verdict != "good"
+            else "",
         )
 
     def _walls(self) -> Iterator[Row]:
@@ -153,9 +167,14 @@ class BoxSurvey(Survey):
             self.keep("start_beyond", name, share)
             verdict = judged(share, (STRAY, 1e-2))
             yield Row(
-                f"start inside the grid, {name}", f"{share:.1g} beyond", f"{STRAY:g}", verdict,
+                f"start inside the grid, {name}",
+                f"{share:.1g} beyond",
+                f"{STRAY:g}",
+                verdict,
                 f"the packet is cut by an end of the grid; move packet.center.{name} away from "
-                f"it or widen grid.{name}" if verdict != "good" else "",
+                f"it or widen grid.{name}"
+                if verdict != "good"
+                else "",
             )
 
     def _departure(self) -> Row:

@@ -102,7 +102,10 @@ class NumericsSurvey(Survey):
         advice = f"take propagator.step = {step:g} {self.units.time} or less"
         verdict = judged(phase, (1.0, math.pi))
         return Row(
-            "phase per step, packet", f"{phase:.3g}", "1", verdict,
+            "phase per step, packet",
+            f"{phase:.3g}",
+            "1",
+            verdict,
             advice if verdict != "good" else "",
         )
 
@@ -130,7 +133,10 @@ class NumericsSurvey(Survey):
             yield Row("order at sharp edges", "4", "2 would be worse", "good")
             return
         yield Row(
-            "order at sharp edges", "4", "2", "watch",
+            "order at sharp edges",
+            "4",
+            "2",
+            "watch",
             f"order 4 brings nothing: the sharp edges leave an error of about {edges:.1g}, the "
             f"step at order 2 of {step:.1g}; propagator.order = 2 takes half the time",
         )
@@ -171,8 +177,11 @@ class NumericsSurvey(Survey):
                     every = down(math.pi * self.hbar / (1.3 * need))
                     advice = f"take output.record_every = {every:g} {self.units.time} or less"
             yield Row(
-                f"detector {spec.name}", f"band {band:.3g} {self.units.energy}",
-                f"packet {need:.3g}", verdict, advice,
+                f"detector {spec.name}",
+                f"band {band:.3g} {self.units.energy}",
+                f"packet {need:.3g}",
+                verdict,
+                advice,
             )
 
     def _kinetic_at(self, axis: int, position: float) -> float:

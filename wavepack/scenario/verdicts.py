@@ -101,7 +101,10 @@ def size_text(size: float) -> str:
 def duration_text(seconds: float) -> str:
     """Return a time in seconds as text, in a fitting unit."""
     for limit, unit, size in (
-        (1e-3, "us", 1e-6), (1.0, "ms", 1e-3), (120.0, "s", 1.0), (7200.0, "min", 60.0),
+        (1e-3, "us", 1e-6),
+        (1.0, "ms", 1e-3),
+        (120.0, "s", 1.0),
+        (7200.0, "min", 60.0),
         (2 * DAY, "h", 3600.0),
     ):
         if seconds < limit:
