@@ -20,7 +20,9 @@ from PIL import Image
 
 from wavepack import workflow
 from wavepack.archive.reader import Run, open_run
-from wavepack.rendering.figures import draw_overview, draw_spectrum
+from wavepack.rendering.figures import draw_spectrum, write_overview
+from wavepack.rendering.from_run import curves_of, frames_of, region_curves_of, scene_of
+from wavepack.rendering.scene import Frames
 from wavepack.scenario.load import load_scenario
 
 ROOT = Path(__file__).resolve().parent.parent
@@ -32,7 +34,7 @@ SHOWN = {
     "barrier": "exit",
     "resonant_pair": "collector-contact",
     "field_emission": "anode",
-    "driven_barrier": "exit",
+    "driven_barrier": None,
     "quasi_bound_decay": None,
     "constriction": "exit",
     "two_apertures": None,
@@ -40,7 +42,10 @@ SHOWN = {
     "cut_in_half": None,
     "box": None,
 }
-WIDTH = 1200
+#: How much of a run its figure shows, where that is not all of it.
+UNTIL = {"resonant_pair": 1400.0, "two_apertures": 520.0, "constriction": 1250.0, "box": 930.0}
+WIDTH = 960
+COLOURS = 160
 
 HEAD = """\
 # Gallery
@@ -66,17 +71,22 @@ def main(names: Sequence[str]) -> None:
 def draw(name: str) -> None:
     """Draw the figures of a run, small enough to travel with the source."""
     run = open_run(RUNS / name)
-    shrink(draw_overview(run, PICTURES / f"{name}.png"))
+    frames = frames_of(run)
+    times = frames.times[frames.times <= UNTIL.get(name, np.inf)]
+    curves = curves_of(run) if leaves(run) else region_curves_of(run)
+    target = PICTURES / f"{name}.png"
+    shrink(write_overview(scene_of(run), Frames(times, frames.read), curves, target))
     if (detector := SHOWN[name]) is not None:
         shrink(draw_spectrum(run, detector, PICTURES / f"{name}-spectrum.png"))
 
 
 def shrink(path: Path) -> None:
-    """Bring a picture to the page's width and 256 colours."""
+    """Bring a picture to the page's width and few colours."""
     with Image.open(path) as whole:
         size = (WIDTH, round(whole.height * WIDTH / whole.width))
         small = whole.convert("RGB").resize(size, Image.Resampling.LANCZOS)
-    small.quantize(256, dither=Image.Dither.NONE).save(path, optimize=True)
+    few = small.quantize(COLOURS, kmeans=4, dither=Image.Dither.NONE)
+    few.save(path, optimize=True)
 
 
 def chapter(name: str) -> str:
@@ -88,9 +98,13 @@ def chapter(name: str) -> str:
         pictures.append(f"![Spectrum: {run.title}](gallery/{name}-spectrum.png)")
     rows = [f"| {what} | {value} |" for what, value in numbers(run)]
     parts = [
-        f"## {run.title}", f"*{question}*", expected,
-        *pictures, "\n".join(["| found | |", "|---|---|", *rows]),
-        f"The file: [scenarios/{name}.toml](../scenarios/{name}.toml)", "",
+        f"## {run.title}",
+        f"*{question}*",
+        expected,
+        *pictures,
+        "\n".join(["| found | |", "|---|---|", *rows]),
+        f"The file: [scenarios/{name}.toml](../scenarios/{name}.toml)",
+        "",
     ]
     return "\n\n".join(parts)
 
