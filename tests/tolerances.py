@@ -26,3 +26,27 @@ def books(steps: int) -> float:
 
 #: Fitted order of a method against the claimed one.
 ORDER = 0.05
+
+
+def norm(steps: int) -> float:
+    """Return the round-off allowed in the norm after some steps without absorption.
+
+    A step multiplies by a few factors of modulus one, each rounded to half a unit
+    in the last place and the same at every step: at worst the errors add up.
+    """
+    return 4 * EPS * steps
+
+
+#: A state that went 20,000 steps forth and as many back.
+REVERSED = 1e-9
+
+#: Two propagations that differ only in how they round: a few hundred steps, each
+#: with two transforms, and phases of up to some hundred radians rounded once.
+TWIN = 1e-10
+
+#: Probability on the grid, absorbed and elsewhere, at every record.
+BALANCE = 1e-10
+
+#: Error of the books against the flux when spacing and step are halved: four times
+#: less at order 2, and less than asymptotic on the coarser of two grids.
+FALL = 3.0

@@ -1,10 +1,11 @@
 """A scenario propagated in memory, with the program's own journal and results."""
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any, cast
 
 import numpy as np
+import numpy.typing as npt
 
 from tests.closed_forms.reference_values import Row
 from wavepack.arrays import ComplexArray, RealArray
@@ -25,23 +26,24 @@ if TYPE_CHECKING:
 class Memory:
     """What a run folder would get, kept as lists."""
 
-    rows: list[dict[str, Any]] = field(default_factory=list)
+    columns: dict[str, list[Any]] = field(default_factory=dict)
     frames: list[tuple[float, ComplexArray]] = field(default_factory=list)
     regions: dict[str, list[float]] = field(default_factory=dict)
     fluxes: dict[str, list[RealArray]] = field(default_factory=dict)
 
-    def append_series(self, row: dict[str, Any]) -> None:
-        """Keep one row of the series."""
-        self.rows.append(row)
+    def append_series(self, rows: Mapping[str, npt.ArrayLike]) -> None:
+        """Keep rows of the series: numbers, or arrays of equal length."""
+        for name, values in rows.items():
+            self.columns.setdefault(name, []).extend(np.atleast_1d(values))
 
     def append_frame(self, time: float, values: ComplexArray) -> None:
         """Keep one frame."""
         self.frames.append((time, np.array(values)))
 
-    def append_region(self, name: str, time: float, value: float) -> None:
+    def append_region(self, name: str, times: npt.ArrayLike, values: npt.ArrayLike) -> None:
         """Keep the probability of a region; its times are those of the series."""
-        del time
-        self.regions.setdefault(name, []).append(value)
+        del times
+        self.regions.setdefault(name, []).extend(np.atleast_1d(values))
 
     def append_detector(self, name: str, times: RealArray, fluxes: RealArray) -> None:
         """Keep readings of a detector, rows of time and flux."""
@@ -77,7 +79,7 @@ class Outcome:
 
     def series(self, name: str) -> Any:  # noqa: ANN401 - a real or complex array
         """Return one column of the series."""
-        return np.array([row[name] for row in self.memory.rows])
+        return np.array(self.memory.columns[name])
 
     def region(self, name: str) -> RealArray:
         """Return the probability of a region at the times of the series."""
