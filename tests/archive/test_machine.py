@@ -97,6 +97,7 @@ resource.setrlimit(resource.RLIMIT_FSIZE, (1_500_000, 1_500_000))
 try:
     for row in range(1000):
         writer.append_frame(row, np.full(2048, row + 1j))
+        writer.flush()
 except MachineError as error:
     print(row, error, flush=True)
 try:

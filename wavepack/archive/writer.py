@@ -7,10 +7,10 @@ second. That is all this module does to a live file.
 """
 
 import os
-import time
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from pathlib import Path
+from time import monotonic as time_now
 from types import TracebackType
 from typing import Any, Final, Self
 
@@ -34,6 +34,7 @@ from wavepack.errors import MachineError, UsageError
 #: Rows are kept back until there are that many, or until the oldest is that old.
 BUFFERED_ROWS: Final = 1000
 BUFFERED_SECONDS: Final = 1.0
+BUFFERED_FRAME_BYTES: Final = 2**22
 
 
 class RunWriter:
@@ -51,7 +52,7 @@ class RunWriter:
         self.notes = notes
         self._file: h5py.File | None = file
         self._reserve = RESERVE
-        self._flushed = time.monotonic()
+        self._flushed = self._framed = time_now()
         self._streams: dict[str, Stream] = {name: Stream(file[name]) for name in stream_names(file)}
         if "frames" in self._streams:
             self._reserve = max(RESERVE, self._streams["frames"].row_bytes)
@@ -114,7 +115,7 @@ class RunWriter:
         return writer
 
     def append_frame(self, time: float, values: npt.NDArray[Any]) -> None:
-        """Write one state of the stored points; it is on disk on return.
+        """Append one state of the stored points; large ones are on disk on return.
 
         Raises
         ------
@@ -124,8 +125,12 @@ class RunWriter:
             If the disk is full or the file cannot be written.
         """
         stream = self._stream("frames")
+        require_space(self.path.parent, (stream.kept + 1) * stream.row_bytes, self._reserve)
         stream.keep({"time": [time], stream.columns[0]: np.asarray(values)[np.newaxis]})
-        self._write([stream])
+        late = time_now() - self._framed > BUFFERED_SECONDS
+        if late or stream.kept * stream.row_bytes >= BUFFERED_FRAME_BYTES:
+            self._write([stream])
+            self._framed = time_now()
 
     def append_series(self, rows: Mapping[str, npt.ArrayLike]) -> None:
         """Append rows of every column of the series: numbers, or arrays of equal length.
@@ -224,7 +229,7 @@ class RunWriter:
             If the disk is full or the file cannot be written.
         """
         self._write([stream for stream in self._streams.values() if stream.kept])
-        self._flushed = time.monotonic()
+        self._flushed = time_now()
 
     def _write(self, streams: list[Stream]) -> None:
         if not streams:
@@ -298,7 +303,7 @@ class RunWriter:
         stream = self._stream(name)
         stream.keep(rows)
         full = stream.kept >= BUFFERED_ROWS
-        if full or time.monotonic() - self._flushed > BUFFERED_SECONDS:
+        if full or time_now() - self._flushed > BUFFERED_SECONDS:
             self.flush()
 
     def _write_fixed(self, group: str, values: Mapping[str, npt.ArrayLike | None]) -> None:

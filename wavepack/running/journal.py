@@ -2,6 +2,7 @@
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from time import monotonic
 from typing import Any
 
 import numpy as np
@@ -16,6 +17,11 @@ from wavepack.scenario.build import Setup
 from wavepack.stepping.march import Snapshot
 from wavepack.stepping.schedule import Schedule
 from wavepack.stepping.scheme import Stepper
+
+#: Rows handed to the archive at once, at most so many or so old: their arrays
+#: cost less together. When they are handed over changes no value.
+KEPT_ROWS = 100
+KEPT_SECONDS = 0.5
 
 #: Books that are open by more than this, or a norm that has grown by it, stop the run.
 OPEN_BOOKS = 1e-6
@@ -83,6 +89,9 @@ class Journal:
         self._overlap = overlap
         self._writer = writer
         output = setup.scenario.output
+        self._rows: list[dict[str, Any]] = []
+        self._region_rows: list[list[float]] = []
+        self._drained = monotonic()
         self._thin = (slice(None, None, output.thin),) * setup.grid.ndim
         self._density = output.store == "density"
 
@@ -123,7 +132,17 @@ class Journal:
         return standing
 
     def drain(self) -> None:
-        """Hand what the detectors have read to the archive."""
+        """Hand rows and what the detectors have read to the archive."""
+        self._drained = monotonic()
+        if self._rows:
+            columns = {name: [row[name] for row in self._rows] for name in self._rows[0]}
+            self._writer.append_series(columns)
+            for name, values in zip(
+                self._setup.book.names, zip(*self._region_rows, strict=True), strict=False
+            ):
+                self._writer.append_region(name, columns["time"], values)
+            self._rows.clear()
+            self._region_rows.clear()
         for detector in self.detectors:
             times, fluxes = detector.drain()
             if times.size:
@@ -172,10 +191,10 @@ class Journal:
             row[f"p{name}"] = seen.momentum[i]
             row[f"sigma_{name}"] = seen.spread[i]
             row[f"sigma_p{name}"] = seen.momentum_spread[i]
-        self._writer.append_series(row)
-        for i, name in enumerate(self._setup.book.names):
-            self._writer.append_region(name, standing.time, standing.region(i))
-        self.drain()
+        self._rows.append(row)
+        self._region_rows.append([standing.region(i) for i in range(len(self._setup.book.names))])
+        if len(self._rows) >= KEPT_ROWS or monotonic() - self._drained > KEPT_SECONDS:
+            self.drain()
 
     def _check(self, standing: Standing, psi: ComplexArray) -> None:
         place = f"step {standing.step}, t = {standing.time:.6g}"

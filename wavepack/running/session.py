@@ -10,6 +10,7 @@ from types import TracebackType
 from typing import Any, Final, Self
 
 import numpy as np
+from threadpoolctl import threadpool_limits
 
 from wavepack import __version__
 from wavepack.archive import checkpoint
@@ -77,6 +78,7 @@ class Session:
             If the scenario cannot be made ready or the folder not be written.
         """
         with ExitStack() as resources:
+            resources.enter_context(threadpool_limits(1))
             resources.enter_context(RunLock(folder))
             session = cls(folder, scenario, resources)
             session._log.write("starting", wavepack=__version__, title=scenario.title)
@@ -103,6 +105,7 @@ class Session:
         if not path.is_file():
             raise UsageError(f"{folder}: no {SCENARIO_FILE} in it; is it a run folder?")
         with ExitStack() as resources:
+            resources.enter_context(threadpool_limits(1))
             resources.enter_context(RunLock(folder))
             scenario = load_scenario(path)
             session = cls(folder, scenario, resources)
@@ -291,21 +294,20 @@ class Session:
 
     def _conclude(self, status: str, snapshot: Snapshot) -> dict[str, Any]:
         standing = self._journal.standing(snapshot)
+        self._journal.drain()
+        now = time.monotonic()
+        self._record = self._record.at(
+            snapshot.step, self._record.wall_seconds + now - self._began
+        )
+        self._began = now
+        results = self._summary(status, standing)
         if status != "interrupted":
-            for detector in self._journal.detectors:
-                incident = self._record.incidents[detector.name]
-                flux = detector.flux_by_energy()
-                summary = self._summary(status, standing)["detectors"][detector.name]
+            for name, found in results["detectors"].items():
                 self._writer.write_spectrum(
-                    detector.name, flux, incident.density, summary["transmission"]
+                    name, found["flux"], found["incident"], found["transmission"]
                 )
             self._write_momentum(snapshot)
         self._save(snapshot)
-        self._record = self._record.at(
-            snapshot.step, self._record.wall_seconds + time.monotonic() - self._began
-        )
-        self._began = time.monotonic()
-        results = self._summary(status, standing)
         write_results(self.folder, results)
         self._log.write(status, step=snapshot.step, reached=snapshot.time)
         return results

@@ -130,7 +130,6 @@ class Stepper:
             if step + 1 < last:
                 self._kick(self._kicks.fused, step + 1, twice=True)
         self._kick(self._kicks.single, last, twice=False)
-        self.tally.settle()
 
     def _kick(self, kick: Kick, step: int, *, twice: bool) -> None:
         time = step * self.dt

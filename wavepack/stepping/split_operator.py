@@ -104,6 +104,14 @@ def _drift(
             part = psi[rows]
             np.multiply(part, column[rows] * rest, out=part)
 
+    if blocks.single:
+        def drift_small() -> None:
+            pair.forward()
+            turn(blocks.slices[0])
+            pair.backward()
+
+        return drift_small
+
     def drift() -> None:
         pair.forward()
         blocks.each(turn)

@@ -6,6 +6,7 @@ open and closed ends of a stretch of steps and twice, fused, between steps:
 the tally keeps the two sums of :math:`|\psi|^2` apart and weighs them when asked.
 """
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from itertools import pairwise
 
@@ -75,37 +76,42 @@ class Tally:
                 inside += np.square(part.real)
                 inside += np.square(part.imag)
 
-    def settle(self) -> None:
-        """Add up what is still only copied."""
-        if not self._filled:
-            return
-        for i, buffer in enumerate(self._buffers):
-            parts = buffer[: self._filled].view(np.float64).reshape(self._filled, -1)
-            squares = np.einsum("ij,ij->j", parts, parts)
-            self._twice[i] += squares.reshape(-1, 2).sum(axis=1).reshape(self._twice[i].shape)
-        self._filled = 0
-
     def patches(self) -> list[Patch]:
-        """Return the probability removed so far, box by box of absorbing cells."""
+        """Return the probability removed so far, box by box of absorbing cells.
+
+        Nothing is changed: when sums are made must depend on steps alone.
+        """
         losses = self._losses or [self._loss(box) for box in self.boxes]
-        return [
-            Patch(box, self._grid.cell * (once * loss + twice * fused))
-            for box, once, twice, (loss, fused) in zip(
-                self.boxes, self._once, self._twice, losses, strict=True
-            )
-        ]
+        found = []
+        for i, (box, (loss, fused)) in enumerate(zip(self.boxes, losses, strict=True)):
+            twice = self._twice[i] + self._copied(i) if self._filled else self._twice[i]
+            found.append(Patch(box, self._grid.cell * (self._once[i] * loss + twice * fused)))
+        return found
 
-    def save(self) -> dict[str, RealArray]:
-        """Return all sums, to go on from later."""
-        self.settle()
-        sums = {f"once/{i}": a.copy() for i, a in enumerate(self._once)}
-        return sums | {f"twice/{i}": a.copy() for i, a in enumerate(self._twice)}
+    def save(self) -> dict[str, np.ndarray]:
+        """Return all sums, and what is only copied yet, to go on from later."""
+        saved: dict[str, np.ndarray] = {}
+        for i in range(len(self.boxes)):
+            saved[f"once/{i}"] = self._once[i].copy()
+            saved[f"twice/{i}"] = self._twice[i].copy()
+            if self._buffers:
+                saved[f"copies/{i}"] = self._buffers[i][: self._filled].copy()
+        return saved
 
-    def restore(self, saved: dict[str, RealArray]) -> None:
-        """Take up sums saved before."""
+    def restore(self, saved: Mapping[str, np.ndarray]) -> None:
+        """Take up what was saved before."""
         for i in range(len(self.boxes)):
             self._once[i][...] = saved[f"once/{i}"]
             self._twice[i][...] = saved[f"twice/{i}"]
+            if self._buffers:
+                self._filled = len(saved[f"copies/{i}"])
+                self._buffers[i][: self._filled] = saved[f"copies/{i}"]
+
+    def _copied(self, i: int) -> RealArray:
+        """Return the sum of squares of what is copied from one box."""
+        parts = self._buffers[i][: self._filled].view(np.float64).reshape(self._filled, -1)
+        squares = np.einsum("ij,ij->j", parts, parts)
+        return squares.reshape(-1, 2).sum(axis=1).reshape(self._twice[i].shape)
 
     def _loss(self, box: tuple[slice, ...]) -> tuple[RealArray, RealArray]:
         """Return the share that one damping removes from each cell of a box, and a fused one."""
@@ -119,7 +125,9 @@ class Tally:
             buffer[self._filled] = self._psi[box]
         self._filled += 1
         if self._filled == len(self._buffers[0]):
-            self.settle()
+            for i, total in enumerate(self._twice):
+                total += self._copied(i)
+            self._filled = 0
 
 
 def _absorbing_boxes(factors: tuple[RealArray, ...]) -> list[tuple[slice, ...]]:
