@@ -35,7 +35,6 @@ LINE = "x = {{ from = -100.0, to = 100.0, points = {n} }}"
 PLANE = LINE + "\ny = {{ from = -100.0, to = 100.0, points = {n} }}"
 
 
-@pytest.mark.bench
 @pytest.mark.parametrize("method", ["split-operator", "crank-nicolson"])
 @pytest.mark.parametrize(
     ("axes", "n", "steps"),
