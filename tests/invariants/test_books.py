@@ -29,7 +29,7 @@ wavenumber = { x = 0.4 }
 [absorber]
 width = 25.0
 [propagator]
-step = 1.0
+step = 0.25
 [time]
 end = 200.0
 [[region]]
@@ -80,7 +80,7 @@ wavenumber = { x = 0.35, y = 0.15 }
 [absorber]
 width = { x = 20.0, y = 15.0 }
 [propagator]
-step = 1.0
+step = 0.25
 [time]
 end = 120.0
 [[region]]
@@ -121,7 +121,7 @@ frames = 2
 record_every = 1.0
 """
 
-few = settings(max_examples=8, deadline=None, derandomize=True)
+few = settings(max_examples=5, deadline=None, derandomize=True)
 
 
 def imbalance(outcome: Outcome) -> float:
