@@ -7,6 +7,7 @@ step loop. A Fourier axis uses the complex transform, a sine axis the type-1
 sine transform, which is exact for a wavefunction held at zero by two walls.
 """
 
+import os
 import sys
 import types
 from dataclasses import dataclass
@@ -18,6 +19,10 @@ import scipy.fft
 from wavepack.arrays import ComplexArray, RealArray
 from wavepack.grid.axis import Axis
 from wavepack.grid.grid import Grid
+
+
+#: Fields below this many points are not worth a second thread.
+THREADED_POINTS = 1 << 16
 
 
 def forward(psi: ComplexArray | RealArray, axis: Axis, array_axis: int = -1) -> ComplexArray:
@@ -34,6 +39,15 @@ def forward(psi: ComplexArray | RealArray, axis: Axis, array_axis: int = -1) -> 
     if axis.basis == "sine":
         return np.asarray(scipy.fft.dst(psi, type=1, axis=array_axis, norm="ortho"))
     return np.asarray(scipy.fft.fft(psi, axis=array_axis, norm="ortho"))
+
+
+def forward_all(psi: ComplexArray, grid: Grid) -> ComplexArray:
+    """Return the coefficients over all axes at once, where all are Fourier axes.
+
+    On two threads where that is worth it; their number changes no bit.
+    """
+    workers = min(2, len(os.sched_getaffinity(0))) if psi.size >= THREADED_POINTS else 1
+    return np.asarray(scipy.fft.fftn(psi, axes=range(grid.ndim), norm="ortho", workers=workers))
 
 
 def backward(coefficients: ComplexArray, axis: Axis, array_axis: int = -1) -> ComplexArray:

@@ -6,11 +6,13 @@ transforms line by line, so that no temporary of the whole grid is made.
 
 import math
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
 from wavepack.arrays import ComplexArray, RealArray
 from wavepack.grid import spectral
+from wavepack.grid.axis import Axis
 from wavepack.grid.blocks import Blocks
 from wavepack.grid.grid import Grid
 from wavepack.observing.regions import PARTS, RegionBook
@@ -148,29 +150,55 @@ def _momenta(
     Last, the largest probability, over the axes, of |k| above a limit.
     """
     means, spreads, squares, beyond = [], [], [], 0.0
+    whole = _marginals(psi, grid) if grid.ndim > 1 and _all_fourier(grid) else None
     for i, axis in enumerate(grid.axes):
-        k = spectral.signed_wavenumbers(axis)
-        first = second = outside = 0.0
-        fast = np.abs(axis.wavenumbers) > limit
-        for lines in _lines(psi, grid, i):
+        weights = _momentum_weights(axis, limit)
+        sums, first = np.zeros(3), 0.0
+        if whole is not None:
+            sums += weights @ whole[i]
+        for lines in _lines(psi, grid, i) if whole is None else ():
             coefficients = spectral.forward(lines, axis)
             density = np.square(coefficients.real)
             density += np.square(coefficients.imag)
-            along = density.reshape(-1, axis.points).sum(axis=0)
-            along *= grid.cell
-            second += float(np.square(axis.wavenumbers) @ along)
-            outside += float(along[fast].sum())
-            if axis.basis == "fourier":
-                first += float(k @ along)
-            else:
-                slope = spectral.slope(lines, axis)
-                first += float(np.vdot(lines, slope).imag) * grid.cell
-        mean, square = first / norm, second / norm
+            along = density if density.ndim == 1 else density.sum(axis=0)
+            sums += weights @ along
+            if axis.basis == "sine":
+                first += float(np.vdot(lines, spectral.slope(lines, axis)).imag)
+        mean = (first or float(sums[0])) * grid.cell / norm
+        square = float(sums[1]) * grid.cell / norm
         means.append(mean)
         squares.append(square)
         spreads.append(max(square - mean**2, 0.0) ** 0.5)
-        beyond = max(beyond, outside)
+        beyond = max(beyond, float(sums[2]) * grid.cell)
     return tuple(means), tuple(spreads), tuple(squares), beyond
+
+
+def _all_fourier(grid: Grid) -> bool:
+    return all(axis.basis == "fourier" for axis in grid.axes)
+
+
+def _marginals(psi: ComplexArray, grid: Grid) -> list[RealArray]:
+    """Return the momentum density along each axis from one transform over all of them."""
+    coefficients = spectral.forward_all(psi, grid)
+    marginals = [np.zeros(n) for n in grid.shape]
+    for rows in Blocks(grid.shape).slices:
+        density = np.square(coefficients[rows].real)
+        density += np.square(coefficients[rows].imag)
+        for i, marginal in enumerate(marginals):
+            along = density.sum(axis=tuple(j for j in range(grid.ndim) if j != i))
+            if i == 0:
+                marginal[rows] = along
+            else:
+                marginal += along
+    return marginals
+
+
+@lru_cache(maxsize=8)
+def _momentum_weights(axis: Axis, limit: float) -> RealArray:
+    """Return k (zero on a sine axis), its square, and whether |k| is above a limit."""
+    k = axis.wavenumbers
+    signed = spectral.signed_wavenumbers(axis) if axis.basis == "fourier" else np.zeros(k.size)
+    return np.array([signed, k**2, np.abs(k) > limit])
 
 
 def momentum_density(psi: ComplexArray, grid: Grid, axis: int) -> tuple[RealArray, RealArray]:

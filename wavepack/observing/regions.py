@@ -63,6 +63,7 @@ class RegionBook:
         self.grid = grid
         self.regions = tuple(regions)
         self.names = tuple(region.name for region in regions)
+        self._axis = _only_axis(self.regions, grid)
         self._kept: dict[tuple[tuple[int, int], ...], RealArray] = {}
 
     def overlap(self) -> float:
@@ -79,13 +80,20 @@ class RegionBook:
 
     def sums(self, box: tuple[slice, ...], values: RealArray) -> RealArray:
         """Return the sums of values over a box: the three parts, then each region."""
+        if self._axis is not None:
+            others = tuple(i for i in range(values.ndim) if i != self._axis)
+            values = values.sum(axis=others)
+            # Along the one axis that limits the regions; any row stands for all.
+            box = tuple(
+                s if i == self._axis else slice(0, 1) for i, s in enumerate(box)
+            )
         key = _key(box)
         if key in self._kept:
             return self._kept[key] @ values.ravel()
         weights = self._weights(box)
-        if self.grid.size > KEPT_POINTS:
+        if self._axis is None and self.grid.size > KEPT_POINTS:
             return np.array([np.sum(w * values) for w in weights])
-        rows = [np.broadcast_to(w, values.shape).ravel() for w in weights]
+        rows = [np.broadcast_to(w, [s.stop - s.start for s in box]).ravel() for w in weights]
         self._kept[key] = np.array(rows)
         return self._kept[key] @ values.ravel()
 
@@ -109,6 +117,18 @@ class RegionBook:
             if region.role == role:
                 total = total + region.weights(box)
         return total
+
+
+def _only_axis(regions: tuple[Region, ...], grid: Grid) -> int | None:
+    """Return the one axis along which all regions are limited, if there is just one."""
+    if any(region.counts is not None for region in regions):
+        return None
+    limiting = {
+        i for region in regions for i, window in enumerate(region.windows) if np.any(window != 1)
+    }
+    if len(limiting) > 1 or grid.ndim == 1:
+        return None
+    return limiting.pop() if limiting else 0
 
 
 def _key(box: tuple[slice, ...]) -> tuple[tuple[int, int], ...]:

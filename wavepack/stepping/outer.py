@@ -20,11 +20,14 @@ def outer_kicks(
     duration: float,
     damping: tuple[RealArray, ...],
     blocks: Blocks,
+    *,
+    spare: bool = False,
 ) -> Kicks:
     r"""Return the kicks :math:`d\,e^{-i\,\mathrm{share}\,V\,dt/\hbar}` and their squares.
 
     ``share`` is the part of the potential in one outer factor; zero leaves the
     damping alone, as where an implicit step holds the potential itself.
+    ``spare`` says that there is memory for one more field.
     """
     scale = share * duration / hamiltonian.particle.hbar
     landscape = hamiltonian.landscape
@@ -45,9 +48,9 @@ def outer_kicks(
         )
         for d in shapes:
             factor *= d
-        # One factor squared where fields are small; large ones are multiplied
-        # twice while in cache, which saves a whole field.
-        single, fused = [factor], [factor * factor] if blocks.single else [factor, factor]
+        # Squared once where there is room; else multiplied twice while in cache.
+        single = [factor]
+        fused = [factor * factor] if blocks.single or spare else [factor, factor]
         always = []
     terms = [(part, _scaled(part.drive.factor, scale), part.values) for part in parts]
     twice = [(part, _scaled(factor_in_time, 2), values) for part, factor_in_time, values in terms]

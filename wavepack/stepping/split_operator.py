@@ -64,7 +64,7 @@ class SplitOperator:
         tally = Tally(psi, hamiltonian.grid, damping, buffered=blocks.single)
         clock = Clock(dt, hamiltonian.particle.hbar)
         if self.order == 2:
-            kicks = outer_kicks(psi, hamiltonian, 1 / 2, dt, damping, blocks)
+            kicks = outer_kicks(psi, hamiltonian, 1 / 2, dt, damping, blocks, spare=True)
             whole = _drift(psi, kinetic, dt, pair, blocks)
             return Stepper(psi, blocks, kicks, lambda _: whole(), tally, clock)
         kicks = outer_kicks(psi, hamiltonian, 1 / 6, dt, damping, blocks)

@@ -58,6 +58,7 @@ class Tally:
         self._losses = [self._loss(box) for box in self.boxes] if buffered else []
         self._buffers: list[ComplexArray] = []
         self._filled = 0
+        self._views = [psi[box] for box in self.boxes]
         if buffered and cells:
             copies = max(1, min(BUFFER_COPIES, BUFFER_POINTS // cells))
             self._buffers = [np.empty((copies, *s), dtype=np.complex128) for s in shapes]
@@ -121,8 +122,8 @@ class Tally:
         return 1 - keep, 1 - keep**2
 
     def _keep(self) -> None:
-        for box, buffer in zip(self.boxes, self._buffers, strict=True):
-            buffer[self._filled] = self._psi[box]
+        for view, buffer in zip(self._views, self._buffers, strict=True):
+            buffer[self._filled] = view
         self._filled += 1
         if self._filled == len(self._buffers[0]):
             for i, total in enumerate(self._twice):
