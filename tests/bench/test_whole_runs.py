@@ -15,6 +15,7 @@ import pytest
 from threadpoolctl import threadpool_limits
 
 from wavepack.grid import spectral
+from wavepack.grid.axis import Axis
 from wavepack.grid.grid import Grid
 from wavepack.running.session import Session
 from wavepack.scenario.load import parse_scenario
@@ -137,7 +138,7 @@ def test_run_against_bare_transforms(
     scenario = parse_scenario(text)
     grid = Grid(
         tuple(
-            spectral.Axis(n, a.start or 0.0, a.stop or 0.0, a.points or 1, ("absorbing",) * 2)
+            Axis(n, a.start or 0.0, a.stop or 0.0, a.points or 1, ("absorbing",) * 2)
             for n, a in scenario.grid.items()
         )
     )

@@ -20,7 +20,6 @@ from wavepack.arrays import ComplexArray, RealArray
 from wavepack.grid.axis import Axis
 from wavepack.grid.grid import Grid
 
-
 #: Fields below this many points are not worth a second thread.
 THREADED_POINTS = 1 << 16
 

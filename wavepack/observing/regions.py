@@ -84,9 +84,7 @@ class RegionBook:
             others = tuple(i for i in range(values.ndim) if i != self._axis)
             values = values.sum(axis=others)
             # Along the one axis that limits the regions; any row stands for all.
-            box = tuple(
-                s if i == self._axis else slice(0, 1) for i, s in enumerate(box)
-            )
+            box = tuple(s if i == self._axis else slice(0, 1) for i, s in enumerate(box))
         key = _key(box)
         if key in self._kept:
             return self._kept[key] @ values.ravel()

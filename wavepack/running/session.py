@@ -296,9 +296,7 @@ class Session:
         standing = self._journal.standing(snapshot)
         self._journal.drain()
         now = time.monotonic()
-        self._record = self._record.at(
-            snapshot.step, self._record.wall_seconds + now - self._began
-        )
+        self._record = self._record.at(snapshot.step, self._record.wall_seconds + now - self._began)
         self._began = now
         results = self._summary(status, standing)
         if status != "interrupted":

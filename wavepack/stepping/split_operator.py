@@ -105,6 +105,7 @@ def _drift(
             np.multiply(part, column[rows] * rest, out=part)
 
     if blocks.single:
+
         def drift_small() -> None:
             pair.forward()
             turn(blocks.slices[0])

@@ -112,7 +112,8 @@ class Tally:
         """Return the sum of squares of what is copied from one box."""
         parts = self._buffers[i][: self._filled].view(np.float64).reshape(self._filled, -1)
         squares = np.einsum("ij,ij->j", parts, parts)
-        return squares.reshape(-1, 2).sum(axis=1).reshape(self._twice[i].shape)
+        sums: RealArray = squares.reshape(-1, 2).sum(axis=1)
+        return sums.reshape(self._twice[i].shape)
 
     def _loss(self, box: tuple[slice, ...]) -> tuple[RealArray, RealArray]:
         """Return the share that one damping removes from each cell of a box, and a fused one."""
