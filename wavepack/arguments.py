@@ -2,6 +2,7 @@
 
 import argparse
 import difflib
+import math
 import re
 from collections.abc import Sequence
 from pathlib import Path
@@ -189,6 +190,19 @@ def _add_movie(parser: Parser) -> None:
     parser.add_argument(
         "--fps", type=_rate, default=25.0, metavar="N", help="stored frames a second (default: 25)"
     )
+    parser.add_argument(
+        "--picture",
+        choices=("density", "real", "phase"),
+        default="density",
+        help="density, real part of the wavefunction, or its phase as colour (default: density)",
+    )
+    parser.add_argument(
+        "--power",
+        type=_power,
+        default=0.5,
+        metavar="P",
+        help="draw the density to the power P, above 0 and at most 1 (default: 0.5)",
+    )
 
 
 def _scenario(parser: Parser) -> None:
@@ -236,6 +250,16 @@ def _rate(text: str) -> float:
         raise argparse.ArgumentTypeError(
             f"need a number of frames a second, got {text!r}"
         ) from None
+
+
+def _power(text: str) -> float:
+    try:
+        value = float(text)
+    except ValueError:
+        value = math.nan
+    if not 0 < value <= 1:
+        raise argparse.ArgumentTypeError(f"need a number above 0 and at most 1, got {text!r}")
+    return value
 
 
 def _check_options(parser: Parser, given: Sequence[str]) -> None:

@@ -158,7 +158,13 @@ def _movie(asked: Namespace) -> int:
 
     _render(
         lambda progress: workflow.movie(
-            asked.folder, asked.out, size=asked.size, fps=asked.fps, progress=progress
+            asked.folder,
+            asked.out,
+            size=asked.size,
+            fps=asked.fps,
+            picture=asked.picture,
+            power=asked.power,
+            progress=progress,
         )
     )
     return DONE

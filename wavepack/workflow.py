@@ -138,14 +138,19 @@ def movie(
     *,
     size: tuple[int, int] = (1280, 720),
     fps: float = 25,
+    picture: str = "density",
+    power: float = 0.5,
     progress: Callable[[int, int], None] | None = None,
 ) -> Path:
     """Render the stored frames of a run, by default to ``movie.mp4`` in its folder.
 
+    ``picture`` is ``"density"``, ``"real"`` or ``"phase"``; ``power`` that of the
+    density's scale.
+
     Raises
     ------
     UsageError
-        If it is no run folder, or ending, size or rate cannot be met.
+        If it is no run folder, or ending, size, rate, picture or power cannot be met.
     MachineError
         If the file cannot be written.
     """
@@ -153,7 +158,9 @@ def movie(
 
     opened = open_run(folder)
     path = opened.folder / MOVIE_FILE if out is None else Path(out)
-    return render_movie(opened, path, size=size, fps=fps, progress=progress)
+    return render_movie(
+        opened, path, size=size, fps=fps, picture=picture, power=power, progress=progress
+    )
 
 
 def require_movie_format(out: Path | str) -> None:

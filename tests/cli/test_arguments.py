@@ -46,6 +46,9 @@ def test_version(capsys: Captured) -> None:
         (["run", "x.toml", "--threads", "two"], "need a whole number from 1 to 9999, got 'two'"),
         (["movie", "d", "--size", "1280"], "need WxH in pixels, such as 1280x720, got '1280'"),
         (["movie", "d", "--fps", "fast"], "need a number of frames a second, got 'fast'"),
+        (["movie", "d", "--picture", "sketch"], "argument --picture: invalid choice: 'sketch'"),
+        (["movie", "d", "--power", "0"], "need a number above 0 and at most 1, got '0'"),
+        (["movie", "d", "--power", "half"], "need a number above 0 and at most 1, got 'half'"),
         (["results", "d", "--json", "--csv"], "not allowed with argument --json"),
     ],
 )

@@ -193,6 +193,19 @@ def test_movie(copied: Path, call: Call) -> None:
     assert "need a file ending in .mp4, .webm or .gif" in wrong.err
 
 
+def test_movie_of_another_picture(copied: Path, call: Call) -> None:
+    """Picture and power of the scale reach the movie."""
+    asked = ("movie", RUN, "--size", "320x180", "--power", "1")
+    done = call(*asked, "--out", "plain.mp4", cwd=copied)
+    assert done.status == 0, done.err
+    real = call(*asked, "--picture", "real", "--out", "real.mp4", cwd=copied)
+    assert real.status == 0, real.err
+    default = call("movie", RUN, "--size", "320x180", "--out", "default.mp4", cwd=copied)
+    assert default.status == 0, default.err
+    movies = {(copied / f"{name}.mp4").read_bytes() for name in ("plain", "real", "default")}
+    assert len(movies) == 3
+
+
 def test_faulty_scenario(call: Call, tmp_path: Path) -> None:
     """Every fault has its line; nothing is made of a run that cannot be."""
     faulty = SCENARIO.replace("height", "heigth").replace("sigma", "sigmma")

@@ -59,10 +59,11 @@ class Rect:
 class Sheet:
     """An empty figure of an exact size in pixels, with its measure of text."""
 
-    def __init__(self, size: tuple[int, int]) -> None:
+    def __init__(self, size: tuple[int, int], em: int | None = None) -> None:
         self.width, self.height = check_size(size)
+        fitting = max(10, round(15 * min(self.width / 1280, self.height / 720)))
         #: Height of ordinary text [pixels]; all margins are multiples of it.
-        self.em = max(10, round(15 * min(self.width / 1280, self.height / 720)))
+        self.em = fitting if em is None else em
         self.figure = Figure(figsize=(self.width / _DPI, self.height / _DPI), dpi=_DPI)
 
     def points(self, ems: float = 1.0) -> float:

@@ -10,13 +10,13 @@ from matplotlib.figure import Figure
 from wavepack.errors import MachineError
 from wavepack.rendering import style
 from wavepack.rendering.from_run import (
-    curves_of,
     frames_of,
-    region_curves_of,
     scene_of,
+    shown_curves_of,
     spectrum_of,
 )
-from wavepack.rendering.overview import line_overview, map_overview, page_layout
+from wavepack.rendering.overview import PAGE_DPI, line_overview, page_layout
+from wavepack.rendering.plane_overview import plane_overview
 from wavepack.rendering.scales import PowerScale, highest_density
 from wavepack.rendering.scene import (
     Curves,
@@ -27,8 +27,6 @@ from wavepack.rendering.scene import (
 
 if TYPE_CHECKING:
     from wavepack.archive.reader import Run
-
-_DPI = 150
 
 
 def draw_overview(run: "Run", path: Path, *, power: float = 0.5) -> Path:
@@ -45,8 +43,7 @@ def draw_overview(run: "Run", path: Path, *, power: float = 0.5) -> Path:
     MachineError
         If the file cannot be written.
     """
-    curves = curves_of(run) or region_curves_of(run)
-    return write_overview(scene_of(run), frames_of(run), curves, path, power=power)
+    return write_overview(scene_of(run), frames_of(run), shown_curves_of(run), path, power=power)
 
 
 def draw_spectrum(run: "Run", detector: str, path: Path) -> Path:
@@ -69,7 +66,7 @@ def write_overview(
     """Draw the overview of a scene; see `draw_overview`, which reads it from a run."""
     scale = PowerScale(highest_density(frames), power)
     with style.applied():
-        draw = line_overview if scene.ndim == 1 else map_overview
+        draw = line_overview if scene.ndim == 1 else plane_overview
         return _save(draw(scene, frames, curves, scale), path)
 
 
@@ -83,7 +80,7 @@ def _save(figure: Figure, path: Path) -> Path:
     path = Path(path)
     FigureCanvasAgg(figure)
     try:
-        figure.savefig(path, dpi=_DPI)
+        figure.savefig(path, dpi=figure.dpi)
     except OSError as error:
         raise MachineError(
             f"{path}: the figure could not be written: {error.strerror or error}"
@@ -92,7 +89,7 @@ def _save(figure: Figure, path: Path) -> Path:
 
 
 def _spectrum(scene: Scene, spectrum: Spectrum) -> Figure:
-    figure = Figure(figsize=(7.6, 4.6), layout=page_layout())
+    figure = Figure(figsize=(7.6, 4.6), dpi=PAGE_DPI, layout=page_layout())
     axes = figure.add_subplot()
     weight = axes.twinx()
     weight.fill_between(

@@ -99,6 +99,14 @@ def region_curves_of(run: "Run") -> Curves | None:
     return Curves(times, tuple(curves)) if len(times) else None
 
 
+def shown_curves_of(run: "Run") -> Curves | None:
+    """Return what the scenario asks: what passes and returns, or else what each region holds."""
+    roles = {fact.get("role", "none") for fact in run.facts.get("regions") or ()}
+    if roles and not roles & {"transmitted", "reflected"}:
+        return region_curves_of(run) or curves_of(run)
+    return curves_of(run) or region_curves_of(run)
+
+
 def spectrum_of(run: "Run", detector: str) -> Spectrum:
     """Return transmission and incident weight by energy at one detector.
 

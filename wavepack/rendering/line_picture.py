@@ -10,7 +10,7 @@ from wavepack.arrays import ComplexArray, RealArray
 from wavepack.rendering import style
 from wavepack.rendering.canvas import Canvas, Pixels, Rect, Sheet, polyline, round_ticks
 from wavepack.rendering.line_structure import draw_structure
-from wavepack.rendering.scales import HEADROOM, PowerScale, energy_window, number
+from wavepack.rendering.scales import HEADROOM, PowerScale, energy_window, numbers
 from wavepack.rendering.scene import (
     Curves,
     Frames,
@@ -132,7 +132,7 @@ class LinePicture:
             ticks = sorted({*ticks, *(-tick for tick in ticks)})
         base, reach = (0.5, HEADROOM / 2) if self._kind == "real" else (0.0, HEADROOM)
         places = [base + reach * float(scale(np.array([tick]))[0]) for tick in ticks]
-        axes.set_yticks(places, [number(tick) for tick in ticks])
+        axes.set_yticks(places, numbers(ticks))
         remark = f", {scale.remark} scale" if scale.remark else ""
         colour = " coloured by phase" if self._kind == "phase" else ""
         text = units.label(name, unit) + colour + remark

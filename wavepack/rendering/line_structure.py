@@ -111,8 +111,8 @@ def _draw_ruler(sheet: Sheet, panel: Rect, scene: Scene) -> None:
     """Draw a coloured bar above the panel over each region."""
     low, high = scene.extent(0)
     bars = [
-        (max(a, low), min(b, high), region.name, style.role_colour(region.role))
-        for region in scene.regions
+        (max(a, low), min(b, high), region.name, colour)
+        for region, (colour, _) in zip(scene.regions, region_looks(scene), strict=True)
         for a, b in intervals(region, scene)
     ]
     thick = max(2, round(0.22 * sheet.em))
@@ -126,6 +126,11 @@ def _draw_ruler(sheet: Sheet, panel: Rect, scene: Scene) -> None:
         if style.text_width(name, 0.8 * sheet.em) < width:
             middle = panel.left + ((start + stop) / 2 - low) / (high - low) * panel.width
             sheet.text(middle, panel.top - 3.2 * thick, name, ems=0.8, ha="center", color=colour)
+
+
+def region_looks(scene: Scene) -> list[tuple[str, style.Dashes]]:
+    """Return colour and dashes of every region, those of its curve."""
+    return style.looks([region.role for region in scene.regions])
 
 
 def intervals(region: Region, scene: Scene) -> list[tuple[float, float]]:

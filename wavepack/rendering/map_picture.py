@@ -1,6 +1,5 @@
 r"""The picture of a run in a plane: the packet as colour under the potential's lines."""
 
-from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -9,11 +8,13 @@ from PIL import Image
 
 from wavepack.arrays import ComplexArray, RealArray
 from wavepack.rendering import style
-from wavepack.rendering.canvas import Canvas, Overlay, Pixels, Rect, Sheet, round_ticks
+from wavepack.rendering.canvas import Canvas, Overlay, Pixels, Rect, Sheet
+from wavepack.rendering.colour_bar import bar_thickness, draw_bar
 from wavepack.rendering.line_picture import PictureKind
 from wavepack.rendering.line_structure import shortened
+from wavepack.rendering.map_layout import layout_of
 from wavepack.rendering.plane_structure import draw_structure
-from wavepack.rendering.scales import PowerScale, number
+from wavepack.rendering.scales import PowerScale
 from wavepack.rendering.scene import (
     Curves,
     Frames,
@@ -21,7 +22,8 @@ from wavepack.rendering.scene import (
     density_of,
     time_format,
 )
-from wavepack.rendering.strip import VALUES_WIDTH, Strip, values_beside
+from wavepack.rendering.strip import Strip
+from wavepack.rendering.ticks import set_ticks
 
 
 class MapPicture:
@@ -43,12 +45,10 @@ class MapPicture:
         real = kind == "real"
         self._scale = PowerScale(peak**0.5, 2 * power) if real else PowerScale(peak, power)
         self._stamp = time_format(frames.times, scene.units.time)
-        bar_width = round((2.4 if kind == "phase" else 1.2) * sheet.em)
-        layout = _layout(sheet, scene, bar_width, with_strip=curves is not None)
-        self.panel = layout.panel
-        self._right = layout.bar.right + round(4.5 * sheet.em)
-        if layout.strip is not None:
-            self._right = max(self._right, layout.strip.right)
+        spans = (scene.extent(0)[1] - scene.extent(0)[0], scene.extent(1)[1] - scene.extent(1)[0])
+        thick = bar_thickness(kind, sheet.em)
+        layout = layout_of(sheet, spans, thick, with_strip=curves is not None)
+        self.panel, self._right = layout.panel, layout.right
         self._draw_frame()
         draw_bar(sheet, layout.bar, kind, self._scale, scene)
         self._strip = None
@@ -108,8 +108,8 @@ class MapPicture:
         axes = sheet.axes(panel)
         axes.set_xlim(*scene.extent(0))
         axes.set_ylim(*scene.extent(1))
-        axes.xaxis.set_major_locator(round_ticks(panel.width / (5 * sheet.em)))
-        axes.yaxis.set_major_locator(round_ticks(panel.height / (4 * sheet.em)))
+        set_ticks(axes, "x", panel.width, sheet.em)
+        set_ticks(axes, "y", panel.height, sheet.em)
         for name, label in (("x", axes.set_xlabel), ("y", axes.set_ylabel)):
             text = scene.units.label(name, scene.units.length)
             label(text, fontsize=sheet.points(0.95), labelpad=sheet.points(0.15))
@@ -118,49 +118,6 @@ class MapPicture:
 def _index(shares: npt.NDArray[np.float32], levels: int) -> npt.NDArray[np.int32]:
     """Turn 0..1 into places of a table."""
     return (shares * np.float32(levels - 1) + np.float32(0.5)).astype(np.int32)
-
-
-def draw_bar(sheet: Sheet, rect: Rect, kind: PictureKind, scale: PowerScale, scene: Scene) -> None:
-    """Draw the colour bar, or for the phase a table of phase by density."""
-    axes = sheet.axes(rect)
-    axes.yaxis.tick_right()
-    axes.yaxis.set_label_position("right")
-    units, remark = scene.units, f", {scale.remark} scale" if scale.remark else ""
-    if kind == "phase":
-        table = style.phase_table()
-        around = np.roll(table, table.shape[1] // 2, axis=1)
-        axes.imshow(
-            style.table_image(np.ascontiguousarray(around.T)),
-            aspect="auto",
-            origin="lower",
-            extent=(0, 1, -1, 1),
-        )
-        axes.set_yticks(
-            [-1, -0.5, 0, 0.5, 1], [f"{style.MINUS}π", f"{style.MINUS}π/2", "0", "π/2", "π"]
-        )
-        axes.set_xticks([])
-        text = f"phase of ψ; brightness: |ψ|²{remark}"
-    else:
-        table = style.signed_table() if kind == "real" else style.density_table()
-        low = -1 if kind == "real" else 0
-        axes.imshow(
-            style.table_image(table)[:, None],
-            aspect="auto",
-            origin="lower",
-            extent=(0, 1, low, 1),
-            interpolation="bilinear",
-        )
-        ticks = scale.ticks(1.7 * sheet.em / rect.height * (1 - low))
-        ticks = sorted({*ticks, *(low * tick for tick in ticks)}) if low else ticks
-        places = [float(scale(np.array([tick]))[0]) for tick in ticks]
-        axes.set_yticks(places, [number(tick) for tick in ticks])
-        axes.set_xticks([])
-        name = "Re ψ" if kind == "real" else "|ψ|²"
-        unit = units.amplitude(2) if kind == "real" else units.density(2)
-        text = units.label(name, unit) + remark
-    axes.set_ylabel(
-        text, fontsize=sheet.fitting(text, rect.height, 0.87), labelpad=sheet.points(0.3)
-    )
 
 
 def _structure(scene: Scene, panel: Rect, size: tuple[int, int], sheet: Sheet) -> Pixels:
@@ -174,73 +131,3 @@ def _structure(scene: Scene, panel: Rect, size: tuple[int, int], sheet: Sheet) -
     axes.set_yticks([])
     draw_structure(axes, scene, sheet.points(), panel)
     return over.render()
-
-
-@dataclass(frozen=True)
-class _Layout:
-    """Where map, colour bar, strip and its values stand."""
-
-    panel: Rect
-    bar: Rect
-    strip: Rect | None = None
-    values: Rect | None = None
-
-
-def _layout(sheet: Sheet, scene: Scene, bar_width: int, *, with_strip: bool) -> _Layout:
-    """Return the boxes; the strip beside the map or below it, as leaves more map."""
-    em = sheet.em
-    room = Rect(
-        round(5 * em),
-        round(2.8 * em),
-        sheet.width - round(11 * em) - bar_width,
-        sheet.height - round(6.2 * em),
-    )
-    if not with_strip or min(room.width / 24, room.height / 16) < em:
-        panel = _fitted(room, scene)
-        return _Layout(panel, _bar(panel, em, bar_width))
-    beside = Rect(room.left, room.top, room.width - round(21 * em), room.height)
-    below = Rect(room.left, room.top, room.width, room.height - round(8.6 * em))
-    panel, low_panel = _fitted(beside, scene), _fitted(below, scene)
-    if panel.width >= low_panel.width:
-        return _beside(sheet, panel, _bar(panel, em, bar_width))
-    return _below(sheet, room, low_panel, _bar(low_panel, em, bar_width))
-
-
-def _beside(sheet: Sheet, panel: Rect, bar: Rect) -> _Layout:
-    em = sheet.em
-    left = bar.right + round(9.5 * em)
-    width = min(sheet.width - left - round(2 * em), round(26 * em))
-    tall = min(round(15 * em), panel.height // 2)
-    strip = Rect(left, panel.bottom - tall, width, tall)
-    values_tall = min(round(6.8 * em), panel.height - tall - em)
-    return _Layout(
-        panel, bar, strip, Rect(left, strip.top - values_tall - em // 2, width, values_tall)
-    )
-
-
-def _below(sheet: Sheet, room: Rect, panel: Rect, bar: Rect) -> _Layout:
-    em = sheet.em
-    gap, foot = round(4.2 * em), round(3.0 * em)
-    spare = sheet.height - room.top - panel.height - gap - foot
-    tall = min(max(spare, round(4.4 * em)), round(13 * em))
-    # Map and strip stand together, in the middle of what is left.
-    top = room.top + max(0, spare - tall) // 2
-    panel, bar = replace(panel, top=top), replace(bar, top=top)
-    left, right = panel.left, bar.right + round((4.5 - VALUES_WIDTH) * em)
-    if right - left < 16 * em:
-        left, right = room.left, sheet.width - round((VALUES_WIDTH + 1) * em)
-    strip = Rect(left, panel.bottom + gap, right - left, tall)
-    return _Layout(panel, bar, strip, values_beside(strip, em))
-
-
-def _fitted(room: Rect, scene: Scene) -> Rect:
-    """Return the largest box in ``room`` with the scene's proportions."""
-    spans = [stop - start for start, stop in (scene.extent(0), scene.extent(1))]
-    pixels = min(room.width / spans[0], room.height / spans[1])
-    width, height = max(2, int(pixels * spans[0])), max(2, int(pixels * spans[1]))
-    left = room.left + (room.width - width) // 2
-    return Rect(left, room.top + (room.height - height) // 2, width, height)
-
-
-def _bar(panel: Rect, em: int, width: int) -> Rect:
-    return Rect(panel.right + round(0.9 * em), panel.top, width, panel.height)

@@ -16,7 +16,7 @@ from av.video.stream import VideoStream
 from wavepack.errors import MachineError, UsageError
 from wavepack.rendering.canvas import Pixels
 from wavepack.rendering.frames import Picture, picture_of
-from wavepack.rendering.from_run import curves_of, frames_of, scene_of
+from wavepack.rendering.from_run import frames_of, scene_of, shown_curves_of
 from wavepack.rendering.palette import Palette
 from wavepack.rendering.scene import Curves, Frames, Scene
 
@@ -103,7 +103,7 @@ def render_movie(
         scene_of(run),
         frames_of(run),
         out,
-        curves=curves_of(run),
+        curves=shown_curves_of(run),
         size=size,
         fps=fps,
         picture=picture,

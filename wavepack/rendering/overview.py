@@ -1,6 +1,6 @@
-"""A whole run on one page: where it was when, and how much of it where."""
+"""A whole run along one axis on a page: where it was when, and how much of it where."""
 
-from typing import Any, Literal
+from typing import Any
 
 import numpy as np
 from matplotlib.axes import Axes
@@ -8,31 +8,30 @@ from matplotlib.cm import ScalarMappable
 from matplotlib.collections import QuadMesh
 from matplotlib.colors import ListedColormap
 from matplotlib.figure import Figure
-from matplotlib.image import AxesImage
 from matplotlib.layout_engine import ConstrainedLayoutEngine
 
-from wavepack.arrays import ComplexArray, RealArray
+from wavepack.arrays import RealArray
 from wavepack.rendering import style
 from wavepack.rendering.canvas import round_ticks
-from wavepack.rendering.line_structure import intervals, with_arrow
-from wavepack.rendering.plane_structure import draw_structure
-from wavepack.rendering.scales import PowerScale, energy_window, number
+from wavepack.rendering.line_structure import intervals, region_looks, with_arrow
+from wavepack.rendering.scales import PowerScale, energy_window, numbers
 from wavepack.rendering.scene import (
     Curves,
     Frames,
     Scene,
     density_of,
-    time_format,
 )
 from wavepack.rendering.strip import draw_curves
 
 #: A space-time map holds no more points along x than a page can show.
 _WIDEST = 1600
+#: Pixels an inch of every page.
+PAGE_DPI = 150
 
 
 def line_overview(scene: Scene, frames: Frames, curves: Curves | None, scale: PowerScale) -> Figure:
     """Return the density by place and time, the structure above and the curves beside it."""
-    figure = Figure(figsize=(9.6, 6.0), layout=page_layout())
+    figure = Figure(figsize=(9.6, 6.0), dpi=PAGE_DPI, layout=page_layout())
     columns = [1.0, 0.03] if curves is None else [1.0, 0.03, 0.36]
     grid = figure.add_gridspec(2, len(columns), width_ratios=columns, height_ratios=[0.34, 1.0])
     above, map_axes = figure.add_subplot(grid[0, 0]), figure.add_subplot(grid[1, 0])
@@ -43,7 +42,7 @@ def line_overview(scene: Scene, frames: Frames, curves: Curves | None, scale: Po
     if curves is not None:
         beside = figure.add_subplot(grid[1, 2])
         _draw_sideways(beside, curves, frames.times)
-        _legend(beside, figure.add_subplot(grid[0, 2]), "lower left")
+        _legend(beside, figure.add_subplot(grid[0, 2]))
     return figure
 
 
@@ -83,8 +82,7 @@ def _draw_profile(axes: Axes, scene: Scene) -> None:
             fontsize=8,
             color=style.ENERGY,
         )
-    for region in scene.regions:
-        colour = style.role_colour(region.role)
+    for region, (colour, _) in zip(scene.regions, region_looks(scene), strict=True):
         for start, stop in intervals(region, scene):
             axes.axvspan(start, stop, 0.96, 1.0, color=colour, linewidth=0)
             axes.annotate(
@@ -114,7 +112,7 @@ def _draw_space_time(axes: Axes, scene: Scene, frames: Frames, scale: PowerScale
         _edges(x[::stride]),
         _edges(frames.times),
         rows,
-        cmap=_colour_map(),
+        cmap=colour_map(),
         vmin=0,
         vmax=1,
         rasterized=True,
@@ -167,7 +165,8 @@ def _edges(points: RealArray) -> RealArray:
     return np.concatenate([[2 * points[0] - middles[0]], middles, [2 * points[-1] - middles[-1]]])
 
 
-def _colour_map() -> ListedColormap:
+def colour_map() -> ListedColormap:
+    """Return the colours of the density from nothing to its peak."""
     return ListedColormap(style.table_image(style.density_table()) / 255.0)
 
 
@@ -176,7 +175,7 @@ def _colour_bar(
 ) -> None:
     ticks = scale.ticks(0.06)
     bar = figure.colorbar(image, cax=axes, ticks=[float(scale(np.array([v]))[0]) for v in ticks])
-    bar.ax.set_yticklabels([number(value) for value in ticks], fontsize=8)
+    bar.ax.set_yticklabels(numbers(ticks), fontsize=8)
     bar.outline.set_linewidth(0.6)
     remark = f", {scale.remark} scale" if scale.remark else ""
     bar.set_label(scene.units.label("|ψ|²", scene.units.density(scene.ndim)) + remark, fontsize=9)
@@ -193,12 +192,12 @@ def _draw_sideways(axes: Axes, curves: Curves, times: RealArray) -> None:
     axes.set_xlabel("probability", fontsize=10)
 
 
-def _legend(axes: Axes, empty: Axes, place: Literal["lower left", "center left"]) -> None:
+def _legend(axes: Axes, empty: Axes) -> None:
     """Name the curves in an empty panel, where they can hide nothing."""
     empty.set_axis_off()
     legend = empty.legend(
         handles=axes.get_legend_handles_labels()[0],
-        loc=place,
+        loc="lower left",
         fontsize=9,
         frameon=False,
         handlelength=2.4,
@@ -206,85 +205,3 @@ def _legend(axes: Axes, empty: Axes, place: Literal["lower left", "center left"]
     )
     for text in legend.get_texts():
         text.set_parse_math(False)
-
-
-def map_overview(scene: Scene, frames: Frames, curves: Curves | None, scale: PowerScale) -> Figure:
-    """Return the density at start, middle and end, with the curves in time below."""
-    spans = [stop - start for start, stop in (scene.extent(0), scene.extent(1))]
-    # Three maps side by side; the page is as tall as their proportions ask.
-    tall = min(max(3.15 * spans[1] / spans[0], 1.4), 7.0)
-    lower = 0.0 if curves is None else 2.1
-    figure = Figure(figsize=(11.0, tall + lower + 1.1), layout=page_layout())
-    grid = figure.add_gridspec(
-        1 if curves is None else 2,
-        3,
-        height_ratios=[1.0] if curves is None else [tall, lower - 0.4],
-    )
-    stamp = time_format(frames.times, scene.units.time)
-    for column, i in enumerate((0, (len(frames) - 1) // 2, len(frames) - 1)):
-        axes = figure.add_subplot(grid[0, column])
-        image = _draw_snapshot(axes, scene, frames.read(i), scale, first=column == 0)
-        when = stamp(float(frames.times[i])).replace("\u2007", "")
-        axes.set_title(when, loc="right", fontsize=10)
-        if column == 0:
-            axes.annotate(
-                scene.title,
-                (0, 1),
-                xycoords="axes fraction",
-                xytext=(0, 24),
-                textcoords="offset points",
-                fontsize=12,
-                parse_math=False,
-                annotation_clip=False,
-            )
-        if column == 2:
-            _colour_bar(figure, axes.inset_axes((1.04, 0, 0.045, 1)), image, scale, scene)
-    if curves is not None:
-        lower_grid = grid[1, :].subgridspec(1, 2, width_ratios=[1, 0.14])
-        along = figure.add_subplot(lower_grid[0])
-        _draw_along(along, scene, frames, curves)
-        _legend(along, figure.add_subplot(lower_grid[1]), "center left")
-    return figure
-
-
-def _draw_snapshot(
-    axes: Axes, scene: Scene, frame: RealArray | ComplexArray, scale: PowerScale, *, first: bool
-) -> AxesImage:
-    strides = [max(1, len(points) // 800) for points in scene.coordinates]
-    shares = scale(density_of(frame)[:: strides[0], :: strides[1]]).T
-    image = axes.imshow(
-        shares,
-        origin="lower",
-        extent=(*scene.extent(0), *scene.extent(1)),
-        cmap=_colour_map(),
-        vmin=0,
-        vmax=1,
-        interpolation="bilinear",
-        aspect="equal",
-    )
-    draw_structure(axes, scene, 10.0)
-    axes.set_xlim(*scene.extent(0))
-    axes.set_ylim(*scene.extent(1))
-    axes.tick_params(labelsize=9, labelleft=first)
-    axes.xaxis.set_major_locator(round_ticks(6))
-    axes.yaxis.set_major_locator(round_ticks(6))
-    axes.set_xlabel(scene.units.label("x", scene.units.length), fontsize=10)
-    if first:
-        axes.set_ylabel(scene.units.label("y", scene.units.length), fontsize=10)
-    return image
-
-
-def _draw_along(axes: Axes, scene: Scene, frames: Frames, curves: Curves) -> None:
-    """Draw probabilities against time, and the moments of the three maps."""
-    for i in {0, (len(frames) - 1) // 2, len(frames) - 1}:
-        axes.axvline(float(frames.times[i]), color=style.GRID, linewidth=1.4)
-    draw_curves(axes, curves, 1.6)
-    start, stop = float(frames.times[0]), float(frames.times[-1])
-    margin = 0.01 * (stop - start) or 0.5
-    axes.set_xlim(start - margin, stop + margin)
-    axes.set_ylim(-0.03, 1.03)
-    axes.tick_params(labelsize=9)
-    axes.xaxis.set_major_locator(round_ticks(10))
-    axes.grid(visible=True, axis="y", color=style.GRID, linewidth=0.6)
-    axes.set_xlabel(scene.units.label("t", scene.units.time), fontsize=10)
-    axes.set_ylabel("probability", fontsize=10)

@@ -6,7 +6,7 @@ from matplotlib.patheffects import withStroke
 
 from wavepack.rendering import style
 from wavepack.rendering.canvas import Rect
-from wavepack.rendering.line_structure import with_arrow
+from wavepack.rendering.line_structure import region_looks, with_arrow
 from wavepack.rendering.scales import energy_window
 from wavepack.rendering.scene import (
     Detector,
@@ -26,9 +26,13 @@ def draw_structure(axes: Axes, scene: Scene, points: float, panel: Rect | None =
     for detector in scene.detectors:
         _draw_detector(axes, scene, detector, points)
         labels.detector(detector)
-    for region in scene.regions:
-        _draw_region(axes, scene, region, points)
-        labels.region(region)
+    for row, (region, (colour, _)) in enumerate(
+        zip(scene.regions, region_looks(scene), strict=True)
+    ):
+        # Neighbours share an edge: the dashes of one stand in the gaps of the other.
+        dashes = (5.0 * (row % 2), (5.0, 5.0))
+        _draw_region(axes, scene, region, colour, dashes, 0.09 * points)
+        labels.region(region, colour)
 
 
 def _draw_potential(axes: Axes, scene: Scene, points: float) -> None:
@@ -43,7 +47,10 @@ def _draw_potential(axes: Axes, scene: Scene, points: float) -> None:
     )
     low, high = energy_window(scene.potential, scene.mean_energy)
     potential = np.nan_to_num(scene.potential[:: strides[0], :: strides[1]].T)
-    potential = np.pad(np.clip(potential, low, high), 1, mode="edge")
+    potential = np.clip(potential, low, high)
+    # Continued straight over half a cell, so that no line bends at the frame.
+    onward = np.pad(potential, 1, mode="reflect", reflect_type="odd")
+    potential = np.clip((np.pad(potential, 1, mode="edge") + onward) / 2, low, high)
     least, most = float(potential.min()), float(potential.max())
     if most - least <= 1e-9 * (high - low) or min(potential.shape) < 2:
         return
@@ -93,8 +100,14 @@ def _draw_detector(axes: Axes, scene: Scene, detector: Detector, points: float) 
     axes.plot(across, up, color=style.INK, linewidth=0.09 * points, linestyle=(0, (1, 2)))
 
 
-def _draw_region(axes: Axes, scene: Scene, region: Region, points: float) -> None:
-    colour, width = style.role_colour(region.role), 0.09 * points
+def _draw_region(
+    axes: Axes,
+    scene: Scene,
+    region: Region,
+    colour: str,
+    dashes: tuple[float, tuple[float, float]],
+    width: float,
+) -> None:
     if region.mask is not None:
         x, y = scene.coordinates
         axes.contour(
@@ -104,7 +117,7 @@ def _draw_region(axes: Axes, scene: Scene, region: Region, points: float) -> Non
             levels=[0.5],
             colors=colour,
             linewidths=width,
-            linestyles="dashed",
+            linestyles=[dashes],
         )
         return
     (x0, x1), (y0, y1) = box_of(region, scene)
@@ -114,7 +127,7 @@ def _draw_region(axes: Axes, scene: Scene, region: Region, points: float) -> Non
             if at in scene.extent(axis):
                 continue
             line = ([at, at], [low, high]) if axis == 0 else ([low, high], [at, at])
-            axes.plot(*line, color=colour, linewidth=width, linestyle=(0, (6, 3)))
+            axes.plot(*line, color=colour, linewidth=width, linestyle=dashes)
 
 
 def box_of(region: Region, scene: Scene) -> tuple[tuple[float, float], tuple[float, float]]:
@@ -143,11 +156,11 @@ class _Labels:
         self._em = 0.8 * points * 100 / 72
         self._taken: list[tuple[float, float, float, float]] = []
 
-    def region(self, region: Region) -> None:
+    def region(self, region: Region, colour: str) -> None:
         """Write the region's name into a free corner of it."""
         (x0, x1), (y0, y1) = box_of(region, self._scene)
         corners = [(x0, y1, 1, -1), (x1, y1, -1, -1), (x0, y0, 1, 1), (x1, y0, -1, 1)]
-        self._write(region.name, corners, style.role_colour(region.role))
+        self._write(region.name, corners, colour)
 
     def detector(self, detector: Detector) -> None:
         """Write the detector's name beside one of its ends."""

@@ -67,11 +67,25 @@ def _even_ticks(peak: float, gap: float) -> list[float]:
 
 def number(value: float) -> str:
     """Write a tick: plainly, or with a power of ten where that would be long."""
-    if value == 0 or 1e-3 <= abs(value) < 1e5:
-        return f"{value:g}".replace("-", style.MINUS)
+    return _plain(value) if value == 0 or 1e-3 <= abs(value) < 1e5 else _raised(value)
+
+
+def numbers(values: list[float]) -> list[str]:
+    """Write ticks of one axis in one manner: all plain, or all with a power of ten."""
+    sizes = [abs(value) for value in values if value]
+    if not sizes or (min(sizes) >= 1e-4 and max(sizes) < 1e5):
+        return [_plain(value) for value in values]
+    return [_raised(value) if value else "0" for value in values]
+
+
+def _plain(value: float) -> str:
+    return f"{value:g}".replace("-", style.MINUS)
+
+
+def _raised(value: float) -> str:
     digits, exponent = f"{value:.2e}".split("e")
-    raised = str(int(exponent)).translate(str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹"))
-    return f"{float(digits):g}·10{raised}".replace("-", style.MINUS)
+    power = str(int(exponent)).translate(str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹"))
+    return f"{float(digits):g}·10{power}".replace("-", style.MINUS)
 
 
 def highest_density(frames: Frames) -> float:

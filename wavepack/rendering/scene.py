@@ -168,7 +168,7 @@ def time_format(times: RealArray, unit: str) -> Callable[[float], str]:
 
     def stamp(time: float) -> str:
         number = f"{time:.{digits}f}"
-        # A figure space is as wide as a digit: the number stays where it is.
-        return f"t = {number.rjust(width, chr(0x2007))}{tail}"
+        # A figure space is as wide as a digit: all stamps are equally long.
+        return f"{chr(0x2007) * (width - len(number))}t = {number}{tail}"
 
     return stamp

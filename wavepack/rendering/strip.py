@@ -5,8 +5,10 @@ from matplotlib.axes import Axes
 
 from wavepack.arrays import RealArray
 from wavepack.rendering import style
-from wavepack.rendering.canvas import Canvas, Pixels, Rect, Sheet, round_ticks
-from wavepack.rendering.scene import Curve, Curves, Units
+from wavepack.rendering.canvas import Canvas, Pixels, Rect, Sheet
+from wavepack.rendering.scales import number
+from wavepack.rendering.scene import Curves, Units
+from wavepack.rendering.ticks import set_ticks
 
 _MOST_POINTS = 2000
 
@@ -21,6 +23,7 @@ class Strip:
         self, sheet: Sheet, rect: Rect, values: Rect, curves: Curves, units: Units, end: float
     ) -> None:
         self._rect, self._values, self._curves, self._em = rect, values, curves, sheet.em
+        self._looks = style.looks([curve.role for curve in curves.curves])
         self._span = (float(min(curves.times[0], 0.0)), float(max(end, curves.times[-1])) or 1.0)
         self._axes = _axes(sheet, rect, units, self._span)
         self._whole: Pixels | None = None
@@ -53,7 +56,7 @@ class Strip:
             middle = round(box.top + (row + 0.5) * pitch)
             text = f"{curve.name} {_value(self._curves.times, curve.values, time)}"
             size = round(0.87 * self._em)
-            canvas.write(text, box.right, middle, size, colour_of(curve, row))
+            canvas.write(text, box.right, middle, size, self._looks[row][0])
 
 
 #: Room to the right of the strip for names and values, in heights of text.
@@ -70,7 +73,7 @@ def _axes(sheet: Sheet, rect: Rect, units: Units, span: tuple[float, float]) -> 
     axes.set_xlim(*span)
     axes.set_ylim(-0.04, 1.04)
     axes.set_yticks([0, 0.5, 1], ["0", "0.5", "1"])
-    axes.xaxis.set_major_locator(round_ticks(rect.width / (4 * sheet.em)))
+    set_ticks(axes, "x", rect.width, sheet.em)
     axes.set_xlabel(
         units.label("t", units.time), fontsize=sheet.points(0.87), labelpad=sheet.points(0.1)
     )
@@ -86,22 +89,16 @@ def draw_curves(axes: Axes, curves: Curves, width: float, *, upright: bool = Fal
     """
     stride = max(1, len(curves.times) // _MOST_POINTS)
     times = curves.times[::stride]
-    for row, curve in enumerate(curves.curves):
+    looks = style.looks([curve.role for curve in curves.curves])
+    for curve, (colour, dashes) in zip(curves.curves, looks, strict=True):
         values = curve.values[::stride]
         axes.plot(
             *((values, times) if upright else (times, values)),
-            color=colour_of(curve, row),
-            linestyle=style.role_dashes(curve.role),
+            color=colour,
+            linestyle=dashes,
             linewidth=width,
             label=curve.name,
         )
-
-
-def colour_of(curve: Curve, row: int) -> str:
-    """Colour of a curve: by its role, or by its place if it has none."""
-    if curve.role == "none":
-        return style.SERIES_COLOURS[row % len(style.SERIES_COLOURS)]
-    return style.role_colour(curve.role)
 
 
 def _value(times: RealArray, values: RealArray, time: float) -> str:
@@ -110,4 +107,4 @@ def _value(times: RealArray, values: RealArray, time: float) -> str:
     if last < 0 or not np.isfinite(values[last]):
         return "\u2013".rjust(6, "\u2007")
     value = float(values[last])
-    return f"{value:.4f}" if abs(value) >= 5e-5 or value == 0 else f"{value:.0e}"
+    return f"{value:.4f}" if abs(value) >= 5e-5 or value == 0 else number(float(f"{value:.0e}"))

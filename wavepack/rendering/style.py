@@ -12,7 +12,7 @@ from contextlib import contextmanager
 from functools import cache
 from pathlib import Path
 from types import MappingProxyType
-from typing import Any, Final, TypeAlias
+from typing import Any, Final, Literal, TypeAlias
 
 import matplotlib as mpl
 import numpy as np
@@ -24,8 +24,8 @@ from wavepack.arrays import RealArray
 #: One packed colour a pixel: bytes red, green, blue, opacity.
 ColourTable: TypeAlias = npt.NDArray[np.uint32]
 
-#: A line style of matplotlib: a name, or an offset and lengths of strokes and gaps.
-Dashes: TypeAlias = str | tuple[int, tuple[float, ...]]
+#: A line style of matplotlib: whole, or an offset and lengths of strokes and gaps.
+Dashes: TypeAlias = Literal["-"] | tuple[int, tuple[float, ...]]
 
 PAPER: Final = "#ffffff"
 INK: Final = "#22272e"
@@ -50,8 +50,15 @@ ROLES: Final[Mapping[str, tuple[str, Dashes]]] = MappingProxyType(
         "none": ("#5d6b7a", (0, (3, 1.2))),
     }
 )
-#: Colours of regions and detectors that must differ from one another.
-SERIES_COLOURS: Final = ("#00796b", "#c2407e", "#8a7a00", "#5a4fcf", "#b5520b", "#4d5866")
+#: Colours and dashes of things without a role, which must differ from one another.
+SERIES: Final[tuple[tuple[str, Dashes], ...]] = (
+    ("#5a4fcf", "-"),
+    ("#b5520b", (0, (5, 1.6))),
+    ("#4d5866", (0, (1.2, 1.2))),
+    ("#00796b", (0, (4, 1.5, 1, 1.5))),
+    ("#c2407e", (0, (8, 2))),
+    ("#8a7a00", (0, (3, 1.2))),
+)
 
 LEVELS: Final = 1024
 _PHASE_HUES: Final = 256
@@ -120,9 +127,17 @@ def role_colour(role: str) -> str:
     return ROLES.get(role, ROLES["none"])[0]
 
 
-def role_dashes(role: str) -> Dashes:
-    """Return the dash pattern of a region's role."""
-    return ROLES.get(role, ROLES["none"])[1]
+def looks(roles: Sequence[str]) -> list[tuple[str, Dashes]]:
+    """Return colour and dashes of each of several: by role, or in turn where it has none."""
+    known = ROLES.keys() - {"none"}
+    found, others = [], 0
+    for role in roles:
+        if role in known:
+            found.append(ROLES[role])
+        else:
+            found.append(SERIES[others % len(SERIES)])
+            others += 1
+    return found
 
 
 @cache
