@@ -21,7 +21,8 @@ from PIL import Image
 from wavepack import workflow
 from wavepack.archive.reader import Run, open_run
 from wavepack.rendering.figures import draw_spectrum, write_overview
-from wavepack.rendering.from_run import curves_of, frames_of, region_curves_of, scene_of
+from wavepack.rendering.from_run import frames_of, scene_of, shown_curves_of
+from wavepack.rendering.palette import Palette
 from wavepack.rendering.scene import Frames
 from wavepack.scenario.load import load_scenario
 
@@ -45,7 +46,8 @@ SHOWN = {
 #: How much of a run its figure shows, where that is not all of it.
 UNTIL = {"resonant_pair": 1400.0, "two_apertures": 520.0, "constriction": 1250.0, "box": 930.0}
 WIDTH = 960
-COLOURS = 160
+#: Bytes that a picture of the gallery may have.
+LARGEST = 150_000
 
 HEAD = """\
 # Gallery
@@ -73,7 +75,7 @@ def draw(name: str) -> None:
     run = open_run(RUNS / name)
     frames = frames_of(run)
     times = frames.times[frames.times <= UNTIL.get(name, np.inf)]
-    curves = curves_of(run) if leaves(run) else region_curves_of(run)
+    curves = shown_curves_of(run)
     target = PICTURES / f"{name}.png"
     shrink(write_overview(scene_of(run), Frames(times, frames.read), curves, target))
     if (detector := SHOWN[name]) is not None:
@@ -81,11 +83,17 @@ def draw(name: str) -> None:
 
 
 def shrink(path: Path) -> None:
-    """Bring a picture to the page's width and few colours."""
+    """Bring a picture to the page's width, and to 256 colours if it is large even then."""
     with Image.open(path) as whole:
         size = (WIDTH, round(whole.height * WIDTH / whole.width))
         small = whole.convert("RGB").resize(size, Image.Resampling.LANCZOS)
-    few = small.quantize(COLOURS, kmeans=4, dither=Image.Dither.NONE)
+    small.save(path, optimize=True)
+    if path.stat().st_size <= LARGEST:
+        return
+    pixels = np.asarray(small.convert("RGBA"))
+    palette = Palette.of([pixels])
+    few = Image.fromarray(palette.places(pixels)).convert("P")
+    few.putpalette(palette.colours.reshape(-1).tolist())
     few.save(path, optimize=True)
 
 

@@ -45,12 +45,16 @@ class Palette:
         _, nearest = cKDTree(colours).query(every)
         return cls(colours, np.asarray(nearest, np.uint8))
 
+    def places(self, picture: Pixels) -> Pixels:
+        """Return the place in the palette of each pixel, shape (height, width)."""
+        return np.asarray(self.nearest[_coarse(picture)])
+
     def frame(self, picture: Pixels) -> av.VideoFrame:
         """Return a picture as places of the palette."""
         listed = np.full((256, 4), 255, np.uint8)
         listed[:, 1:] = self.colours
         # The library's own types leave out this form, which its docstring describes.
-        pair: Any = (self.nearest[_coarse(picture)], listed)
+        pair: Any = (self.places(picture), listed)
         return av.VideoFrame.from_ndarray(pair, format="pal8")
 
 

@@ -45,7 +45,7 @@ def plane_overview(
         _write_stamp(sheet, layout.maps[place], stamps[place])
     draw_bar(sheet, layout.bar, "density", scale, scene)
     if curves is not None and layout.curves is not None:
-        _draw_along(sheet, layout.curves, scene, frames.times[list(moments)], curves)
+        _draw_along(sheet, layout.curves, scene, frames.times, moments, curves)
         _draw_legend(sheet, layout.curves, curves, rows)
     return sheet.figure
 
@@ -103,13 +103,20 @@ def _draw_snapshot(
         axes.set_ylabel(text, fontsize=sheet.fitting(text, 1.6 * panel.height, 0.95))
 
 
-def _draw_along(sheet: Sheet, rect: Rect, scene: Scene, moments: RealArray, curves: Curves) -> None:
+def _draw_along(
+    sheet: Sheet,
+    rect: Rect,
+    scene: Scene,
+    times: RealArray,
+    moments: tuple[int, ...],
+    curves: Curves,
+) -> None:
     """Draw probabilities against time, and the moments of the three maps."""
     axes = sheet.axes(rect)
-    for moment in np.unique(moments):
-        axes.axvline(float(moment), color=style.FAINT_INK, alpha=0.45, linewidth=2.0)
+    for i in sorted(set(moments)):
+        axes.axvline(float(times[i]), color=style.FAINT_INK, alpha=0.45, linewidth=2.0)
     draw_curves(axes, curves, sheet.points(0.13))
-    start, stop = float(curves.times[0]), float(curves.times[-1])
+    start, stop = float(times[0]), float(times[-1])
     margin = 0.01 * (stop - start) or 0.5
     axes.set_xlim(start - margin, stop + margin)
     axes.set_ylim(-0.03, 1.03)

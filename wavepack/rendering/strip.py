@@ -107,4 +107,6 @@ def _value(times: RealArray, values: RealArray, time: float) -> str:
     if last < 0 or not np.isfinite(values[last]):
         return "\u2013".rjust(6, "\u2007")
     value = float(values[last])
-    return f"{value:.4f}" if abs(value) >= 5e-5 or value == 0 else number(float(f"{value:.0e}"))
+    # What is less than the rounding of a sum over the grid is nothing.
+    plain = abs(value) >= 5e-5 or abs(value) < 1e-12
+    return f"{value:.4f}" if plain else number(float(f"{value:.0e}"))
