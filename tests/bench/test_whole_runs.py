@@ -1,6 +1,6 @@
 """Whole runs against the bare transforms of the same run, in turn, as ratios.
 
-Not part of the tests: ``python -m pytest tests/bench -s``. Everything a run does
+Not part of the tests: ``python -m pytest -m bench tests/bench -s``. Everything a run does
 counts on its side: phases, tallies, detectors, series, frames, checkpoints. The
 peer is the same number of planned in-place transform pairs of the same array on
 the same number of threads and nothing else. Medians of alternated pairs.

@@ -57,9 +57,12 @@ DRIVEN = """
 shape = "gaussian"
 height = 0.8
 center = {center}
-sigma = 1.5
+sigma = {sigma}
 drive = { photon_energy = 1.3, phase = "40 deg" }
 """
+
+#: Widths of driven pieces: one acts on the whole grid, the other in a box of it.
+DRIVES = {"": (), "wide": (1.5,), "narrow": (0.5,), "both": (1.5, 0.5)}
 
 
 def problem(
@@ -68,6 +71,7 @@ def problem(
     *,
     axes: int = 1,
     driven: bool = False,
+    drives: str = "",
     orders: str = "",
     points: int = 128,
     ends: str = "periodic",
@@ -76,9 +80,9 @@ def problem(
     """Return a packet that meets a smooth barrier, driven or not, on one or two axes."""
     text = HEAD.format(method=method, orders=orders, step=step, end=end)
     text += (LINE if axes == 1 else PLANE).format(points=points, ends=ends)
-    if driven:
-        center = "{ x = 0.5 }" if axes == 1 else "{ x = 0.5, y = 0.2 }"
-        text += DRIVEN.replace("{center}", center)
+    center = "{ x = 0.5 }" if axes == 1 else "{ x = 0.5, y = 0.2 }"
+    for sigma in DRIVES["wide" if driven else drives]:
+        text += DRIVEN.replace("{center}", center).replace("{sigma}", str(sigma))
     return Setup(parse_scenario(text))
 
 
