@@ -133,6 +133,18 @@ def build() -> tuple[Parser, dict[str, Parser]]:
             "runs/one-barrier",
         )
     )
+    _folder(
+        command(
+            "crosscheck",
+            "compare a run's transmission with an independent stationary calculation",
+            "For static potentials between two uniform leads, in one dimension or along a\n"
+            "guide in two. Prints both and their difference; every energy goes to\n"
+            "crosscheck.csv and crosscheck.json in the run folder, curves to its figures/.\n"
+            "Ends with 3 if they differ by more than the errors that the run states, with 2\n"
+            "and the reason where the calculation does not apply.",
+            "runs/one-barrier",
+        )
+    )
     return parser, commands
 
 

@@ -177,6 +177,16 @@ def _report(asked: Namespace) -> int:
     return DONE
 
 
+def _crosscheck(asked: Namespace) -> int:
+    from wavepack import workflow
+    from wavepack.reporting import crosscheck
+
+    found = workflow.crosscheck(asked.folder)
+    _print(crosscheck.as_text(found))
+    _say(f"{asked.folder}: {workflow.CROSSCHECK_FILE} and {workflow.CROSSCHECK_TABLE} written")
+    return MISSED if found["agrees"] is False else DONE
+
+
 COMMANDS: Final[dict[str, Callable[[Namespace], int]]] = {
     "check": _check,
     "run": _run,
@@ -184,6 +194,7 @@ COMMANDS: Final[dict[str, Callable[[Namespace], int]]] = {
     "results": _results,
     "movie": _movie,
     "report": _report,
+    "crosscheck": _crosscheck,
 }
 
 

@@ -7,11 +7,11 @@ from pathlib import Path
 from types import FrameType
 from typing import TYPE_CHECKING, Any, Final
 
-from wavepack.archive.disk import machine_errors
+from wavepack.archive.disk import machine_errors, write_atomically
 from wavepack.archive.layout import RESULTS_FILE, RUN_FILE, SCENARIO_FILE
 from wavepack.archive.lock import RunLock
 from wavepack.archive.reader import open_run
-from wavepack.archive.results import jsonable, read_results
+from wavepack.archive.results import jsonable, read_results, write_results
 from wavepack.errors import MachineError, UsageError
 from wavepack.running.session import News, Session, as_run
 from wavepack.scenario.build import Setup
@@ -34,6 +34,8 @@ Note = Callable[[str], None]
 RUNS: Final = Path("runs")
 MOVIE_FILE: Final = "movie.mp4"
 FIGURES: Final = "figures"
+CROSSCHECK_FILE: Final = "crosscheck.json"
+CROSSCHECK_TABLE: Final = "crosscheck.csv"
 
 
 def check(scenario: Scenario, *, timing: bool = True) -> Forecast:
@@ -207,6 +209,39 @@ def draw_figures(opened: "Run") -> "tuple[list[Picture], list[str]]":
             drawn = draw_spectrum(opened, name, folder / f"spectrum-{name}.png")
             pictures.append(Picture(drawn, f"Transmission by energy at detector {name}"))
     return pictures, remarks
+
+
+def crosscheck(folder: Path | str) -> dict[str, Any]:
+    """Compare a run with a stationary calculation and return what was found.
+
+    Writes ``crosscheck.json``, ``crosscheck.csv`` and a figure for each detector
+    whose curves could be compared into the folder.
+
+    Raises
+    ------
+    UsageError
+        If it is no run folder, or the stationary calculation does not apply.
+    MachineError
+        If the files cannot be written.
+    """
+    from wavepack.analysis.crosscheck import crosscheck as compare  # noqa: PLC0415 - see above
+    from wavepack.rendering.crosscheck_figure import draw_crosscheck  # noqa: PLC0415 - see above
+    from wavepack.reporting.crosscheck import as_csv  # noqa: PLC0415 - see above
+
+    folder = Path(folder)
+    seen = results(folder)
+    try:
+        found = plain(compare(scenario_of(folder), seen))
+    except UsageError as error:
+        raise UsageError(f"{folder}: no crosscheck: {error}") from error
+    write_results(folder, found, CROSSCHECK_FILE)
+    write_atomically(folder / CROSSCHECK_TABLE, as_csv(found).encode())
+    drawn = {name: one for name, one in found["detectors"].items() if "kind" in one}
+    with machine_errors(folder / FIGURES, folder):
+        (folder / FIGURES).mkdir(exist_ok=True)
+    for name, one in drawn.items():
+        draw_crosscheck(name, one, found["title"], folder / FIGURES / f"crosscheck-{name}.png")
+    return found
 
 
 def misses(found: dict[str, Any], scenario: Scenario) -> list[str]:
