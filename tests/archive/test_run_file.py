@@ -194,6 +194,16 @@ def test_live_run_is_read_by_another_process(
     writer.close()
 
 
+@pytest.mark.parametrize("locking", [None, True, False, "best-effort"])
+def test_run_is_read_while_the_same_process_has_the_file_open(
+    filled: Path, locking: bool | str | None
+) -> None:
+    """A file left open in plain h5py, whatever its locking, does not keep a run from opening."""
+    expected = open_run(filled).read("series/norm")
+    with h5py.File(filled / "run.h5", "r", locking=locking):
+        assert np.array_equal(open_run(filled).read("series/norm"), expected)
+
+
 def test_rows_are_buffered_and_flushed(tmp_path: Path, make_plan: Plan) -> None:
     """Single rows wait for a flush; a thousand are written by themselves."""
     with RunWriter.create(tmp_path, make_plan()) as writer:

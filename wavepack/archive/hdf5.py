@@ -19,15 +19,26 @@ STORED_END: Final = slice(40, 48)
 SIGNATURE: Final = b"\x89HDF\r\n\x1a\n\x00"
 FAR_END: Final = 2**50
 
+#: What a file's locking may be; off is the archive's own.
+LOCKINGS: Final = (False, True, "best-effort")
+
 
 def open_file(path: Path, mode: str) -> h5py.File:
     """Open the file as every part of the archive does.
 
     The oldest format is open to every reader. `RunLock` keeps a second writer
     out; HDF5's own lock would only shut out those who want to look at a live
-    run, and would let a forgotten notebook block a resume.
+    run, and would let a forgotten notebook block a resume. Where this process
+    has the file open already, HDF5 wants the locking of that first time.
     """
-    return h5py.File(path, mode, libver=("earliest", "v110"), locking=False)
+    for locking in LOCKINGS:
+        try:
+            return h5py.File(path, mode, libver=("earliest", "v110"), locking=locking)
+        except OSError as error:
+            if "locking flag" not in str(error):
+                raise
+            refusal = error
+    raise refusal
 
 
 def check_schema(file: h5py.File, path: Path) -> None:
