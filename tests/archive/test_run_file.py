@@ -4,6 +4,7 @@ import subprocess
 import sys
 from collections.abc import Callable
 from pathlib import Path
+from typing import Any
 
 import h5py
 import numpy as np
@@ -195,9 +196,7 @@ def test_live_run_is_read_by_another_process(
 
 
 @pytest.mark.parametrize("locking", [None, True, False, "best-effort"])
-def test_run_is_read_while_the_same_process_has_the_file_open(
-    filled: Path, locking: bool | str | None
-) -> None:
+def test_run_is_read_while_the_same_process_has_the_file_open(filled: Path, locking: Any) -> None:
     """A file left open in plain h5py, whatever its locking, does not keep a run from opening."""
     expected = open_run(filled).read("series/norm")
     with h5py.File(filled / "run.h5", "r", locking=locking):

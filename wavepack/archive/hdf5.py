@@ -35,7 +35,7 @@ def open_file(path: Path, mode: str) -> h5py.File:
         try:
             return h5py.File(path, mode, libver=("earliest", "v110"), locking=locking)
         except OSError as error:
-            if "locking flag" not in str(error):
+            if "file locking" not in str(error) or "values don't match" not in str(error):
                 raise
             refusal = error
     raise refusal
