@@ -195,11 +195,15 @@ def test_live_run_is_read_by_another_process(
     writer.close()
 
 
-@pytest.mark.parametrize("locking", [None, True, False, "best-effort"])
-def test_run_is_read_while_the_same_process_has_the_file_open(filled: Path, locking: Any) -> None:
+@pytest.mark.parametrize(
+    "options", [{}, {"locking": True}, {"locking": False}, {"locking": "best-effort"}]
+)
+def test_run_is_read_while_the_same_process_has_the_file_open(
+    filled: Path, options: dict[str, Any]
+) -> None:
     """A file left open in plain h5py, whatever its locking, does not keep a run from opening."""
     expected = open_run(filled).read("series/norm")
-    with h5py.File(filled / "run.h5", "r", locking=locking):
+    with h5py.File(filled / "run.h5", "r", **options):
         assert np.array_equal(open_run(filled).read("series/norm"), expected)
 
 
