@@ -153,6 +153,13 @@ class FluxDetector:
             total += (current * weight) @ self._weights
         return self._sign * total * self.spectrum.rate / (2 * np.pi * self._hbar)
 
+    def amplitude_by_energy(self) -> ComplexArray | None:
+        r"""Return :math:`F_0(E)`, the amplitude at a point by energy; None for a line."""
+        if self.spectrum is None or self._weights.size > 1:
+            return None
+        sums = self._sums + self._transformed()
+        return sums.reshape(len(sums), -1)[:, 0]
+
     def save(self) -> dict[str, np.ndarray]:
         """Return all that was gathered, the readings not yet transformed included."""
         return {

@@ -35,13 +35,15 @@ class Plane:
     .. math:: J = \sum_{(p,q,w)} w\,\mathrm{Im}(u_p^* u_q)
 
     with the ``pairs`` (p, q, w), w in length**2/time or, for differences, so
-    that J comes out in probability per time and per transverse length.
+    that J comes out in probability per time and per transverse length. The first
+    functional is the amplitude at ``position`` [length].
     """
 
     axis: int
     pairs: tuple[tuple[int, int, float | RealArray], ...]
     rows: RealArray | None = None
     points: tuple[int, ...] = ()
+    position: float = math.nan
 
     def read(self, psi: ComplexArray) -> ComplexArray:
         """Return the functionals, shape (functionals, transverse points)."""
@@ -154,7 +156,7 @@ class SpectralKinetic:
         keep = taper(np.abs(self.grid.axes[axis].wavenumbers), last)
         rows = np.array(spectral.readout(self.grid.axes[axis], position, keep))
         speed = 2 * self.particle.stiffness / self.particle.hbar
-        return Plane(axis, ((0, 1, speed),), rows=rows)
+        return Plane(axis, ((0, 1, speed),), rows=rows, position=position)
 
 
 @dataclass(frozen=True)
@@ -264,12 +266,15 @@ class StaggeredKinetic:
 
         Between points j <= cut < l, :math:`J = -\frac{2\Delta}{\hbar}\sum T_{jl}
         \mathrm{Im}\,\psi_j^*\psi_l`; the two cuts nearest to the plane are
-        interpolated. All energies pass: an implicit step cannot alias one.
+        interpolated. All energies pass; with a reading at every step an implicit
+        scheme cannot alias one.
         """
         del band
         line = self.grid.axes[axis]
         place = (position - line.coordinates[0]) / line.spacing - 0.5
-        first = int(np.clip(np.floor(place), 0, line.points - 3))
+        first = math.floor(place)
+        if line.basis == "sine":
+            first = min(max(first, 0), line.points - 3)
         share = place - first
         weights: dict[tuple[int, int], float | RealArray] = {}
         for cut, fraction in ((first, 1 - share), (first + 1, share)):
@@ -278,18 +283,26 @@ class StaggeredKinetic:
         points = tuple(sorted({j for pair in weights for j in pair}))
         place_of = {j: i for i, j in enumerate(points)}
         pairs = tuple((place_of[j], place_of[m], w) for (j, m), w in sorted(weights.items()))
-        return Plane(axis, pairs, points=points)
+        first_point = float(line.coordinates[points[0]])
+        return Plane(axis, pairs, points=points, position=first_point)
 
     def _cut(self, axis: int, cut: int) -> dict[tuple[int, int], float | RealArray]:
         """Weights of the pairs of points whose coupling crosses one cut."""
         reach = self.order - 1
         line = self.grid.axes[axis]
-        first, last = max(0, cut + 1 - reach), min(line.points - 1, cut + reach)
+        before = [_point(j, line) for j in range(cut + 1 - reach, cut + 1)]
+        beyond = [_point(m, line) for m in range(cut + 1, cut + reach + 1)]
         factor = -2 * line.spacing / self.particle.hbar
         weights: dict[tuple[int, int], float | RealArray] = {}
-        columns = {j: self.slopes[axis][:, [j]].toarray().ravel() for j in range(first, last + 1)}
-        for j in range(first, cut + 1):
-            for m in range(cut + 1, last + 1):
+        columns = {
+            j: self.slopes[axis][:, [j]].toarray().ravel()
+            for j in (*before, *beyond)
+            if j is not None
+        }
+        for j in before:
+            for m in beyond:
+                if j is None or m is None:
+                    continue
                 product = columns[j] * columns[m]
                 links = np.flatnonzero(product)
                 if links.size:
@@ -304,6 +317,13 @@ class StaggeredKinetic:
         chosen = np.moveaxis(np.take(stiffness, links, axis=axis), axis, 0)
         across = np.tensordot(product, chosen, axes=1)
         return float(across) if across.ndim == 0 else across.ravel()
+
+
+def _point(number: int, line: Axis) -> int | None:
+    """Return which point a number means: around the seam of a ring, none beyond walls."""
+    if line.basis == "fourier":
+        return number % line.points
+    return number if 0 <= number < line.points else None
 
 
 def taper(k: RealArray, last: float) -> RealArray:

@@ -37,6 +37,11 @@ T = TypeVar("T")
 BAND_MARGIN = 4.0
 #: Series have between this many rows and twice as many, unless told otherwise.
 RECORDS = 1000
+#: A detector's energies, left out, hold all but this share of the packet at either
+#: end, found among so many, and so many photons more where the potential is driven.
+LEFT_OUT = 1e-4
+TRIAL_ENERGIES = 801
+SIDEBANDS = 3
 #: Fields below this many points are not worth a second thread.
 THREADED_POINTS = 1 << 15
 
@@ -248,9 +253,10 @@ class Setup:
         spread = 0.0
         for axis in range(self.grid.ndim):
             k, density = momentum_density(self.start[0], self.grid, axis)
-            total = density.sum()
-            mean = float(k @ density / total)
-            spread += float((k - mean) ** 2 @ density / total)
+            apart = _variance(np.abs(k), density)
+            speed = float(np.abs(k) @ density / density.sum())
+            # Packets that move apart have no mean momentum, but their speed has little spread.
+            spread += apart if apart < speed**2 / 4 else _variance(k, density)
         return self.choices.reference - self.particle.stiffness * spread
 
     def detectors(self, clock: Clock) -> tuple[FluxDetector, ...]:
@@ -266,6 +272,7 @@ class Setup:
                 self.grid.index(spec.axis),
                 spec.at,
                 np.linspace(*self.choices.energies[spec.name]),
+                self._reading(spec),
             )
             for spec in self.scenario.detector
         }
@@ -294,6 +301,12 @@ class Setup:
             self.choices.read_every,
             Spectrum(energies, clock.angle(energies), clock.rate(energies)),
         )
+
+    def _reading(self, spec: DetectorSpec) -> float:
+        """Where a detector reads its amplitude along its axis."""
+        if self.grid.ndim > 1:
+            return spec.at
+        return self.kinetic.plane(0, spec.at, self.band).position
 
     def _across(self, spec: DetectorSpec, axis: int) -> RealArray:
         """Transverse cell size times the share of each transverse cell counted."""
@@ -377,7 +390,12 @@ class Setup:
         if spec.toward is not None:
             return 1.0 if spec.toward.startswith("+") else -1.0
         axis = self.grid.index(spec.axis)
-        return 1.0 if spec.at >= self.content.centre[axis] else -1.0
+        away = spec.at - self.content.centre[axis]
+        if abs(away) < self.grid.axes[axis].spacing:
+            # The packet starts on the plane: forward is where it moves.
+            k, density = momentum_density(self.start[0], self.grid, axis)
+            away = float(k @ density)
+        return 1.0 if away >= 0 else -1.0
 
     def _record_every(self, steps: int) -> int | None:
         asked = self.scenario.output.record_every
@@ -407,12 +425,16 @@ class Setup:
             return (spec.energies.start, spec.energies.stop, spec.energies.points)
         axis = self.grid.index(spec.axis)
         launch = Launch(self.start[0], self.hamiltonian_bare, axis)
-        k, w = self.content.wavenumbers[axis], self.content.weights[axis]
-        chosen = k[w > 1e-4 * w.max()]
-        levels = float(launch.levels.min()), float(launch.levels.max())
-        low = levels[0] + self.particle.stiffness * float(chosen.min()) ** 2
-        high = levels[1] + self.particle.stiffness * float(chosen.max()) ** 2
-        return (low, high, 251)
+        k = np.array([0.0, self.content.fastest(axis)])
+        kinetic = launch.kinetic.energy_of(k, axis)
+        span = np.linspace(launch.levels.min(), launch.levels.max() + kinetic[1], TRIAL_ENERGIES)
+        density = launch.by_energy(span, 1.0) + launch.by_energy(span, -1.0)
+        share = np.cumsum(density) / max(density.sum(), 1e-300)
+        low = float(span[max(int(np.searchsorted(share, LEFT_OUT)) - 1, 0)])
+        high = float(span[min(int(np.searchsorted(share, 1 - LEFT_OUT)) + 1, span.size - 1)])
+        photons = SIDEBANDS * max(self.content.photons, default=0.0)
+        low = max(low - photons, float(self.landscape.static.min()))
+        return (low, high + photons, 251)
 
     @cached_property
     def hamiltonian_bare(self) -> Hamiltonian:
@@ -431,6 +453,12 @@ def given(value: T | None, key: str) -> T:
     if value is None:
         raise ValueError(f"{key}: left out")
     return value
+
+
+def _variance(values: RealArray, weights: RealArray) -> float:
+    total = weights.sum()
+    mean = float(values @ weights / total)
+    return float((values - mean) ** 2 @ weights / total)
 
 
 def _divisor(number: int, limit: int) -> int:
