@@ -25,6 +25,8 @@ from wavepack.physics.expressions import compile_expression
 from wavepack.physics.smoothing import smoothed
 
 LINE = Grid((Axis("x", -10.0, 10.0, 200),))
+#: Halving between samples ends 2^-36 of a cell around a change; shares are rounded to 2^-31.
+FINE = 1e-9
 PLANE = Grid((Axis("x", -6.0, 6.0, 60), Axis("y", -5.0, 5.0, 40)))
 
 
@@ -93,24 +95,51 @@ def test_half_spaces_cover_each_cell_once() -> None:
     assert both == pytest.approx(np.ones(9), abs=1e-14)
 
 
-def test_covered_fraction_counts_samples() -> None:
+def shares(text: str, grid: Grid) -> RealArray:
+    """Return the covered share of each cell."""
+    counts, parts = covered_fraction(compile_expression(text, variables=("x", "y", "t")), grid)
+    return counts / parts
+
+
+def test_covered_fraction_of_halves_and_quarters() -> None:
     """A half-plane cut through cells covers a half, a quarter, nothing, everything."""
-    half = compile_expression("x > 0", variables=("x", "y", "t"))
-    counts, samples = covered_fraction(half, LINE)
-    assert counts.dtype == np.dtype(np.uint8)
-    assert samples == 64
-    assert counts[98:103].tolist() == [0, 0, 32, 64, 64]
-    quarter = compile_expression("x > 0 and y > 0", variables=("x", "y", "t"))
-    counts, samples = covered_fraction(quarter, PLANE)
-    assert samples == 64
-    assert counts[29:32, 19:22].tolist() == [[0, 0, 0], [0, 16, 32], [0, 32, 64]]
+    assert shares("x > 0", LINE)[98:103] == pytest.approx([0, 0, 0.5, 1, 1], abs=FINE)
+    corner_cells = shares("x > 0 and y > 0", PLANE)[29:32, 19:22]
+    assert corner_cells == pytest.approx(
+        np.array([[0, 0, 0], [0, 0.25, 0.5], [0, 0.5, 1]]), abs=FINE
+    )
+
+
+@pytest.mark.parametrize("edge", [0.0, 0.0371, 0.0499, 0.05, 1.0 / 3.0])
+def test_where_covers_what_a_span_covers(edge: float) -> None:
+    """A comparison counts each cell as the span with the same edge does, on both axes."""
+    span = Span(lower=edge)
+    assert shares(f"x > {edge}", LINE) == pytest.approx(
+        covered_by_span(span, LINE.axes[0]), abs=FINE
+    )
+    columns = covered_by_span(span, PLANE.axes[0])[:, None] * np.ones(40)
+    assert shares(f"x > {edge}", PLANE) == pytest.approx(columns, abs=FINE)
+    rows = covered_by_span(span, PLANE.axes[1])[None, :] * np.ones((60, 1))
+    assert shares(f"y > {edge}", PLANE) == pytest.approx(rows, abs=FINE)
+
+
+def test_covered_areas() -> None:
+    """A strip aslant and a disc have their areas; a set and the rest share each cell."""
+    aslant = shares("abs(x + 0.37*y) < 1.234", PLANE)[:, 1:]
+    assert aslant.sum() * PLANE.cell == pytest.approx(2 * 1.234 * 39 * 0.25, rel=1e-4)
+    disc = shares("x**2 + y**2 < 4", PLANE)
+    assert disc.sum() * PLANE.cell == pytest.approx(4 * math.pi, rel=1e-4)
+    assert (disc + shares("x**2 + y**2 >= 4", PLANE)).max() <= 1 + FINE
 
 
 def test_covered_fraction_wraps_a_periodic_axis() -> None:
     """The first cell of a periodic axis reaches back across the end."""
     grid = Grid((Axis("x", 0.0, 10.0, 10, ("periodic", "periodic")),))
-    counts, _ = covered_fraction(compile_expression("x > 5", variables=("x",)), grid)
-    assert counts.tolist() == [32, 0, 0, 0, 0, 32, 64, 64, 64, 64]
+    wanted = [0.5, 0, 0, 0, 0, 0.5, 1, 1, 1, 1]
+    assert shares("x > 5", grid) == pytest.approx(wanted, abs=FINE)
+    plane = Grid((*grid.axes, Axis("y", 0.0, 4.0, 4, ("periodic", "periodic"))))
+    wide = np.array(wanted)[:, None] * np.ones(4)
+    assert shares("x > 5", plane) == pytest.approx(wide, abs=FINE)
 
 
 @pytest.mark.parametrize("start", [0.0, 0.013, 0.0371])
