@@ -156,3 +156,34 @@ def test_csv_holds_every_quantity_in_full(results: Results) -> None:
     assert rows["detectors.exit.sidebands.+1"]["value"] == "0.01"
     assert rows["expectations.x"]["unit"] == "nm"
     assert len(rows) == 1 + 6 + 1 + 5 + 2
+
+
+def tail(value: float | None, unit: str, fit: float | None) -> Results:
+    """Return a fitted quantity."""
+    return {"value": value, "error": None, "unit": unit, "fit_error": fit}
+
+
+def test_tails_and_times_are_printed_where_known(results: Results) -> None:
+    """Lifetime, width, extrapolated probabilities, dwell time and delay have lines of their own."""
+    known = {"lifetime": tail(139.8, "fs", 0.5), "width": tail(0.00471, "eV", 2e-5)}
+    results["tails"] = {
+        "well": known,
+        "norm": {"lifetime": tail(None, "fs", None), "width": tail(None, "eV", None)},
+    }
+    results["extrapolated"] = {
+        "transmission": tail(0.4999, "", 1e-6),
+        "reflection": tail(None, "", None),
+        "reason": None,
+    }
+    time = {"error": None, "unit": "fs"}
+    results["regions"]["drain"]["dwell_time"] = {"value": 12.5, **time}
+    results["detectors"]["exit"]["delay"] = {"value": -1.6, **time}
+    text = as_text(results)
+    assert line_of(text, "lifetime of well").split()[3:] == ["139.8000", "5.0e-01", "fs"]
+    assert line_of(text, "extrapolated transmission").split()[2:] == ["0.4999000", "1.0e-06"]
+    assert line_of(text, "time spent there").split()[3:] == ["12.50000", "—", "fs"]
+    assert line_of(text, "delay against free motion").split()[4] == "-1.600000"
+    assert "of norm" not in text
+    assert "Errors of tails are of the fit alone" in text
+    assert "extrapolated reflection" not in text
+    assert "tails.well.lifetime,139.8,,fs" in as_csv(results)

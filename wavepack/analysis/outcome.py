@@ -33,14 +33,11 @@ def detector_results(
 ) -> dict[str, Any]:
     """Return what one detector saw, in time and by energy."""
     crossed, forward, backward = detector.crossed, detector.forward, detector.backward
-    one_way = forward > 0 and backward < LEAST_BACKWARD * forward
     result: dict[str, Any] = {
         "crossed": quantity(crossed),
         "forward": quantity(forward),
         "backward": quantity(backward),
-        "mean_crossing_time": quantity(
-            detector.mean_crossing_time if one_way else None, units["time"]
-        ),
+        "mean_crossing_time": quantity(mean_crossing_time(detector), units["time"]),
     }
     if detector.spectrum is None:
         return result
@@ -69,6 +66,12 @@ def detector_results(
         "energy_unit": units["energy"],
     }
     return result
+
+
+def mean_crossing_time(detector: FluxDetector) -> float | None:
+    """Return the mean crossing time [time]; None unless the flux is one-way."""
+    one_way = detector.forward > 0 and detector.backward < LEAST_BACKWARD * detector.forward
+    return detector.mean_crossing_time if one_way else None
 
 
 def by_energy(

@@ -194,6 +194,23 @@ class RunWriter:
             file.attrs.modify("scenario_sha256", np.bytes_(text_sha256(text)))
             file.flush()
 
+    def column(self, name: str) -> npt.NDArray[Any]:
+        """Return all whole rows of a growing dataset such as ``series/held``; see `flush`.
+
+        Raises
+        ------
+        ValueError
+            If the run has no such dataset.
+        MachineError
+            If the disk is full or the file cannot be read.
+        """
+        self.flush()
+        group, _, column = name.rpartition("/")
+        if column not in {"time", *self._stream(group).columns}:
+            raise ValueError(f"{name}: not part of this run")
+        with self._guard() as file:
+            return np.asarray(file[name][: self._stream(group).count])
+
     def counts(self) -> dict[str, int]:
         """Return how many rows each growing group has, buffered ones included."""
         return {name: stream.count for name, stream in self._streams.items()}

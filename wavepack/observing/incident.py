@@ -151,8 +151,8 @@ class Launch:
         kinetic = hamiltonian.kinetic
         if isinstance(kinetic, StaggeredKinetic):
             masses = np.broadcast_to(kinetic.masses[0], kinetic.slopes[0].shape[:1])
-            if not np.allclose(masses[[self._centre, there]], hamiltonian.particle.mass):
-                return "the mass at the plane or where the packet starts is not the particle's"
+            if not np.isclose(masses[self._centre], masses[there]):
+                return "the mass at the plane is not that where the packet starts"
         return None
 
     def _momentum_amplitude(self, k: RealArray, amplitude: ComplexArray) -> ComplexArray:

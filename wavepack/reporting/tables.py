@@ -18,7 +18,18 @@ CAUTION: Final = (
 )
 NO_ERROR: Final = "—"
 NO_ERROR_NOTE: Final = f"{NO_ERROR} no numerical error has been established"
+TAILS_NOTE: Final = (
+    "Errors of tails are of the fit alone; those of step and grid come on top. Extrapolated: "
+    "what is still held shared as the tail shares it. It is no part of the probabilities above."
+)
 NO_VALUE: Final = "none"
+
+#: Times at a detector that are printed where they are known.
+TIMES: Final = {
+    "median_crossing_time": "median crossing time",
+    "crossing_time_spread": "spread of crossing times",
+    "delay": "delay against free motion",
+}
 
 WIDTH: Final = 80
 _NUMBER: Final = re.compile(r"([+-]?\d+)(\.\d*)?(e[+-]\d+)?")
@@ -65,6 +76,7 @@ def sections(results: Mapping[str, Any]) -> tuple[Section, ...]:
     found = [
         _fault(results),
         Section("Probabilities", _quantities(results.get("quantities", {}))),
+        _tails(results.get("tails") or {}, results.get("extrapolated") or {}),
         Section("Regions", _regions(results.get("regions", {}))),
         *(_detector(name, seen) for name, seen in results.get("detectors", {}).items()),
         Section("Expectation values of what remains", _quantities(results.get("expectations", {}))),
@@ -98,8 +110,9 @@ def as_csv(results: Mapping[str, Any]) -> str:
     text = io.StringIO()
     table = csv.writer(text, lineterminator="\n")
     table.writerow(("name", "value", "error", "unit"))
-    for group in ("time", "quantities", "regions", "detectors", "expectations"):
-        for name, found in _leaves(group, results.get(group, {})):
+    groups = ("time", "quantities", "tails", "extrapolated", "regions", "detectors", "expectations")
+    for group in groups:
+        for name, found in _leaves(group, results.get(group) or {}):
             number = [found["value"], found.get("error")]
             cells = ["" if x is None else repr(x) for x in number]
             table.writerow((name, *cells, found.get("unit", "")))
@@ -172,7 +185,32 @@ def _quantities(found: Mapping[str, Any]) -> tuple[Row, ...]:
 
 
 def _regions(found: Mapping[str, Any]) -> tuple[Row, ...]:
-    return tuple(_row(name, one["probability"]) for name, one in found.items())
+    rows = []
+    for name, one in found.items():
+        rows.append(_row(name, one["probability"]))
+        if one.get("dwell_time", {}).get("value") is not None:
+            rows.append(_row("  time spent there", one["dwell_time"]))
+    return tuple(rows)
+
+
+def _tails(tails: Mapping[str, Any], extrapolated: Mapping[str, Any]) -> Section:
+    """Return the decays found, and what they make of transmission and reflection."""
+    rows = [
+        _fitted(f"{kind} of {name}", tail[kind])
+        for name, tail in tails.items()
+        for kind in ("lifetime", "width")
+        if tail[kind]["value"] is not None
+    ]
+    rows += [
+        _fitted(f"extrapolated {kind}", extrapolated[kind])
+        for kind in ("transmission", "reflection")
+        if extrapolated.get(kind, {}).get("value") is not None
+    ]
+    return Section("Slow tails", tuple(rows), (TAILS_NOTE,) if rows else ())
+
+
+def _fitted(name: str, found: Mapping[str, Any]) -> Row:
+    return Row(name, significant(found["value"]), _error(found["fit_error"]), found["unit"])
 
 
 def _fault(results: Mapping[str, Any]) -> Section:
@@ -185,6 +223,11 @@ def _detector(name: str, seen: Mapping[str, Any]) -> Section:
         _row(key.replace("_", " "), seen[key])
         for key in ("crossed", "forward", "backward", "mean_crossing_time")
         if key in seen
+    ]
+    rows += [
+        _row(name, seen[key])
+        for key, name in TIMES.items()
+        if seen.get(key, {}).get("value") is not None
     ]
     rows += [row for kind in ("transmission", "reflection") for row in _peak(kind, seen)]
     for band in seen.get("sidebands") or ():

@@ -10,6 +10,7 @@ import numpy as np
 from wavepack.archive.writer import RunWriter
 from wavepack.arrays import ComplexArray
 from wavepack.errors import NumericalFault
+from wavepack.observing.dwell import Dwell
 from wavepack.observing.flux import FluxDetector, Overlap
 from wavepack.observing.moments import Moments, moments
 from wavepack.observing.regions import PARTS
@@ -84,6 +85,7 @@ class Journal:
     def __init__(self, setup: Setup, stepper: Stepper, overlap: Overlap, writer: RunWriter) -> None:
         self.detectors: tuple[FluxDetector, ...] = setup.detectors(stepper.clock)
         self.beyond_band = 0.0
+        self.dwell = Dwell(len(setup.book.names))
         self._setup = setup
         self._stepper = stepper
         self._overlap = overlap
@@ -155,6 +157,8 @@ class Journal:
         for detector in self.detectors:
             for key, value in detector.save().items():
                 state[f"detectors/{detector.name}/{key}"] = value
+        for key, value in self.dwell.save().items():
+            state[f"dwell/{key}"] = value
         for key, value in self._overlap.save().items():
             state[f"overlap/{key}"] = value
         return state
@@ -162,11 +166,9 @@ class Journal:
     def restore(self, state: Mapping[str, Any]) -> None:
         """Take up what was saved; the overlap is restored by its own constructor."""
         self.beyond_band = float(state["beyond_band"])
+        self.dwell.restore(_section(state, "dwell/"))
         for detector in self.detectors:
-            prefix = f"detectors/{detector.name}/"
-            detector.restore(
-                {k.removeprefix(prefix): v for k, v in state.items() if k.startswith(prefix)}
-            )
+            detector.restore(_section(state, f"detectors/{detector.name}/"))
 
     def _frame(self, psi: ComplexArray) -> np.ndarray:
         thinned = psi[self._thin]
@@ -191,6 +193,7 @@ class Journal:
             row[f"p{name}"] = seen.momentum[i]
             row[f"sigma_{name}"] = seen.spread[i]
             row[f"sigma_p{name}"] = seen.momentum_spread[i]
+        self.dwell.add(standing.time, seen.regions)
         self._rows.append(row)
         self._region_rows.append([standing.region(i) for i in range(len(self._setup.book.names))])
         if len(self._rows) >= KEPT_ROWS or monotonic() - self._drained > KEPT_SECONDS:
@@ -217,3 +220,8 @@ class Journal:
                 f"{place}: the books do not balance: transmission + reflection + held + lost "
                 f"= {standing.balance:.9g}, need 1"
             )
+
+
+def _section(state: Mapping[str, Any], prefix: str) -> dict[str, Any]:
+    """Return what stands under a prefix, without it."""
+    return {k.removeprefix(prefix): v for k, v in state.items() if k.startswith(prefix)}

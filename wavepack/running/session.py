@@ -320,7 +320,15 @@ class Session:
         write_results(self.folder, results)
 
     def _summary(self, status: str, standing: Standing | None) -> dict[str, Any]:
-        return summarise(status, self._setup, self._record, self._journal, standing, self.scenario)
+        return summarise(
+            status,
+            self._setup,
+            self._record,
+            self._journal,
+            standing,
+            self.scenario,
+            self._writer.column,
+        )
 
 
 def as_run(scenario: Scenario) -> Scenario:

@@ -71,10 +71,13 @@ class Record:
             "wall_seconds": self.wall_seconds,
             "former_ends": self.former_ends,
             "reasons": {name: i.reason for name, i in self.incidents.items()},
+            "phase_reasons": {name: i.phase_reason for name, i in self.incidents.items()},
         }
         state: dict[str, Any] = {"record": json.dumps(facts), "knowledge": self.knowledge}
         for name, incident in self.incidents.items():
             state[f"incident/{name}"] = np.array([incident.density, incident.away])
+            if incident.free is not None:
+                state[f"free/{name}"] = incident.free
         for i, density in enumerate(self.before):
             state[f"before/{i}"] = density
         return state
@@ -83,8 +86,15 @@ class Record:
     def restored(cls, state: Mapping[str, Any]) -> "Record":
         """Return the record that `save` described."""
         facts = json.loads(state["record"])
+        phase_reasons = facts.pop("phase_reasons")
         incidents = {
-            name: Incident(state[f"incident/{name}"][0], state[f"incident/{name}"][1], reason)
+            name: Incident(
+                state[f"incident/{name}"][0],
+                state[f"incident/{name}"][1],
+                reason,
+                state.get(f"free/{name}"),
+                phase_reasons[name],
+            )
             for name, reason in facts.pop("reasons").items()
         }
         count = sum(key.startswith("before/") for key in state)

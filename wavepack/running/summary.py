@@ -8,6 +8,7 @@ from wavepack import __version__
 from wavepack.analysis.outcome import detector_results, quantity, sidebands
 from wavepack.archive.layout import text_sha256
 from wavepack.observing.flux import FluxDetector
+from wavepack.running.history import Columns, dwell_of, tail_results, times_at
 from wavepack.running.journal import Journal, Standing
 from wavepack.running.plan import unit_symbols
 from wavepack.running.state import Record
@@ -26,8 +27,12 @@ def summarise(
     journal: Journal,
     standing: Standing | None,
     scenario: Scenario,
+    columns: Columns | None = None,
 ) -> dict[str, Any]:
-    """Return what `results.json` holds; without a standing only what is known at once."""
+    """Return what `results.json` holds; without a standing only what is known at once.
+
+    ``columns`` gives the course of the run, for slow tails and times.
+    """
     units = unit_symbols(scenario)
     step = 0 if standing is None else standing.step
     results: dict[str, Any] = {
@@ -41,6 +46,8 @@ def summarise(
             detector.name: _detector(detector, setup, record, units)
             for detector in journal.detectors
         }
+        if columns is not None:
+            _add_history(results, columns, setup, record, journal, standing, units)
     results["numerics"] = _numerics(setup, record, journal, units)
     results["provenance"] = _provenance(record, scenario)
     return results
@@ -77,6 +84,24 @@ def _standing_results(
         for i, name in enumerate(setup.book.names)
     }
     return {"quantities": quantities, "regions": regions, "expectations": expectations}
+
+
+def _add_history(
+    results: dict[str, Any],
+    columns: Columns,
+    setup: Setup,
+    record: Record,
+    journal: Journal,
+    standing: Standing,
+    units: dict[str, str],
+) -> None:
+    """Add what the course of the run tells."""
+    time = units["time"]
+    results |= tail_results(columns, setup, units)
+    for i, name in enumerate(setup.book.names):
+        results["regions"][name] |= dwell_of(journal, standing, i, time)
+    for detector in journal.detectors:
+        results["detectors"][detector.name] |= times_at(columns, detector, setup, record, time)
 
 
 def _detector(
