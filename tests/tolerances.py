@@ -50,3 +50,9 @@ BALANCE = 1e-10
 #: Error of the books against the flux when spacing and step are halved: four times
 #: less at order 2, and less than asymptotic on the coarser of two grids.
 FALL = 3.0
+
+#: Stationary integration of order 8: some hundred steps, each to 1e-10 of its amplitude.
+INTEGRATED = 2e-9
+
+#: Coupled modes extrapolated from two spacings of 16 and 24 points a wave, smooth potential.
+GUIDED = 1e-6

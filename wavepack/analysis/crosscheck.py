@@ -116,17 +116,22 @@ def solve(passage: Passage) -> Solved:
     tolerance, most = AVERAGE[passage.grid.ndim]
     low, high = incoming.energies
     base = float(incoming.levels.min())
+    ends = [math.sqrt(max(e - base, 0.0) / incoming.c) for e in (low, high)]
+
+    def density(q: RealArray) -> RealArray:
+        return incoming.weight(base + incoming.c * q**2) * 2 * incoming.c * q
+
+    peak = float(density(np.linspace(ends[0], ends[1], 200)).max())
 
     def weighted(q: RealArray) -> RealArray:
         energies = base + incoming.c * q**2
-        weight = incoming.weight(energies) * 2 * incoming.c * q
-        heavy = weight > 1e-9 * max(float(weight.max()), 1e-300)
+        weight = density(q)
+        heavy = weight > tolerance / 100 * peak
         t, r = np.zeros(q.size), np.zeros(q.size)
         if heavy.any():
             t[heavy], r[heavy] = scatterer.scatter(energies[heavy])
         return np.stack([weight * t, weight * r])
 
-    ends = [math.sqrt(max(e - base, 0.0) / incoming.c) for e in (low, high)]
     middle = np.linspace(ends[0], ends[1], 9 if passage.grid.ndim == 1 else 3)
     (through, back), error = integral(weighted, [float(q) for q in middle], tolerance, most)
     return Solved(
@@ -163,8 +168,8 @@ def _prepared(passage: Passage) -> tuple[Scatterer, Incoming, str, float]:
         passage.from_upper,
     )
     lead = line.lead(far=False)
-    s = -passage.line.coordinates if passage.from_upper else passage.line.coordinates
-    incoming = Incoming(s, passage.psi, np.array([lead.height]), lead.c, passage.line.spacing)
+    s, psi = passage.way
+    incoming = Incoming(s, psi, np.array([lead.height]), lead.c, passage.line.spacing)
     text = (
         "exact matrices of a stack of layers"
         if line.constant_by_layers

@@ -79,6 +79,13 @@ class Passage:
         weight = np.sum(np.abs(self.psi) ** 2, axis=1)
         return float(self.line.coordinates @ weight / weight.sum())
 
+    @cached_property
+    def way(self) -> tuple[RealArray, ComplexArray]:
+        """Positions s along the way to the obstacle, rising, and the state at them."""
+        if self.from_upper:
+            return -self.line.coordinates[::-1], self.psi[::-1]
+        return self.line.coordinates, self.psi
+
     def beyond(self, at: float) -> bool:
         """Whether a plane lies on the far side of the packet."""
         return (at < self.mean) if self.from_upper else (at > self.mean)

@@ -29,11 +29,11 @@ from wavepack.grid.grid import Grid
 from wavepack.physics.potentials import total
 
 #: Points a shortest wavelength of the coarser grid, and by how much the other is finer.
-POINTS_A_WAVE: Final = 20.0
+POINTS_A_WAVE: Final = 16.0
 FINER: Final = 1.5
 #: Modes are kept up to this many times the highest kinetic energy, and so many more.
-MODE_ENERGY: Final = 2.0
-MORE_MODES: Final = 4
+MODE_ENERGY: Final = 1.5
+MORE_MODES: Final = 3
 MOST_MODES: Final = 64
 #: Points across for each mode kept.
 POINTS_A_MODE: Final = 6
@@ -262,7 +262,7 @@ def _highest(passage: Passage) -> float:
     line, c = passage.line, passage.scenario.particle.stiffness
     k = 2 * np.pi * np.fft.fftfreq(line.points, line.spacing)
     density = np.sum(np.abs(np.fft.fft(passage.psi, axis=0)) ** 2, axis=1)
-    fastest = float(np.abs(k[density > 1e-6 * density.max()]).max())
+    fastest = float(np.abs(k[density > 1e-5 * density.max()]).max())
     across = passage.across
     weight = np.sum(np.abs(passage.psi) ** 2, axis=0)
     row = _potential(passage, across, 200, len(weight))[0] if across else np.zeros(1)
@@ -335,9 +335,9 @@ def _lattice(passage: Passage, basis: Basis, h: float) -> Lattice:
 def _incoming(passage: Passage, basis: Basis) -> tuple[Incoming, float]:
     """Return the packet by modes, and the probability in none of them."""
     line, across = passage.line, basis.axis
-    amplitudes = passage.psi @ basis.at(across.coordinates) * across.spacing
+    s, psi = passage.way
+    amplitudes = psi @ basis.at(across.coordinates) * across.spacing
     inside = float(np.sum(np.abs(amplitudes) ** 2) * line.spacing)
-    s = -line.coordinates if passage.from_upper else line.coordinates
     c = passage.scenario.particle.stiffness
     return Incoming(s, amplitudes, basis.levels, c, line.spacing), max(0.0, 1 - inside)
 
