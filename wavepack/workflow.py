@@ -3,9 +3,12 @@
 import signal
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
+from dataclasses import replace
 from pathlib import Path
 from types import FrameType
 from typing import TYPE_CHECKING, Any, Final
+
+from threadpoolctl import threadpool_limits
 
 from wavepack.archive.disk import machine_errors, write_atomically
 from wavepack.archive.layout import RESULTS_FILE, RUN_FILE, SCENARIO_FILE
@@ -14,10 +17,12 @@ from wavepack.archive.reader import open_run
 from wavepack.archive.results import jsonable, read_results, write_results
 from wavepack.errors import MachineError, UsageError
 from wavepack.running.session import News, Session, as_run
+from wavepack.running.tables import as_kept
 from wavepack.scenario.build import Setup
 from wavepack.scenario.load import load_scenario
 from wavepack.scenario.preflight import Forecast, forecast
 from wavepack.scenario.schema import Scenario
+from wavepack.scenario.tables import relative_to
 from wavepack.scenario.write import to_toml
 
 if TYPE_CHECKING:
@@ -72,17 +77,18 @@ def run(
         See `wavepack.errors`.
     """
     folder = default_folder(scenario) if out is None else Path(out)
-    if fresh and (former := move_aside(folder)) is not None:
-        note(f"{folder}: the former run is now in {former}")
-    refuse_existing(folder, scenario)
-    try:
-        folder.mkdir(parents=True, exist_ok=True)
-    except OSError as error:
-        raise MachineError(
-            f"{folder}: cannot be made: {error.strerror}; give another folder with --out"
-        ) from error
-    with asked_to_stop() as asked, Session.start(scenario, folder, threads=threads) as session:
-        return plain(session.propagate(stop_asked=asked, tell=tell))
+    if not fresh:
+        refuse_existing(folder, scenario)
+    with asked_to_stop() as asked:
+        # A scenario that is refused leaves everything as it is.
+        with threadpool_limits(1):
+            setup = Setup(scenario)
+        if fresh and (former := move_aside(folder)) is not None:
+            note(f"{folder}: the former run is now in {former}")
+        refuse_existing(folder, scenario)
+        make_folder(folder)
+        with Session.start(scenario, folder, threads=threads, setup=setup) as session:
+            return plain(session.propagate(stop_asked=asked, tell=tell))
 
 
 def resume(
@@ -300,12 +306,31 @@ def ended(folder: Path) -> dict[str, Any] | None:
     if not (folder / RESULTS_FILE).is_file():
         return None
     found = read_results(folder)
-    return found if found.get("status") in {"finished", "stopped_early"} else None
+    if found.get("status") not in {"finished", "stopped_early"}:
+        return None
+    # The end may have been moved since by a process that was killed.
+    end, reached = scenario_of(folder).time.end, found["time"]["value"]
+    early = found["status"] == "stopped_early"
+    return found if early or end is None or reached >= end * (1 - 1e-9) else None
 
 
 def plain(found: dict[str, Any]) -> dict[str, Any]:
     """Return results as `results.json` holds them, so that both ways to them give the same."""
     return {name: jsonable(value) for name, value in found.items()}
+
+
+def is_run_of(folder: Path, scenario: Scenario) -> bool:
+    """Whether a folder's run is of a scenario, moved ends apart."""
+    ours = to_toml(as_kept(as_run(scenario), folder))
+    if (folder / SCENARIO_FILE).read_text(encoding="utf-8") == ours:
+        return True
+    found = read_results(folder) if (folder / RESULTS_FILE).is_file() else {}
+    moved = found.get("provenance", {}).get("former_ends", [])
+    if scenario.time.end not in moved:
+        return False
+    theirs = relative_to(scenario_of(folder), folder)
+    output = replace(theirs.output, frames=scenario.output.frames)
+    return to_toml(replace(theirs, time=scenario.time, output=output)) == ours
 
 
 def refuse_existing(folder: Path, scenario: Scenario) -> None:
@@ -315,7 +340,7 @@ def refuse_existing(folder: Path, scenario: Scenario) -> None:
     if not holds_run(folder):
         return
     path = folder / SCENARIO_FILE
-    same = path.is_file() and path.read_text(encoding="utf-8") == to_toml(as_run(scenario))
+    same = path.is_file() and is_run_of(folder, scenario)
     if same:
         raise UsageError(
             f"{folder}: holds a run of this scenario already: `wavepack results {folder}` shows "
@@ -354,6 +379,16 @@ def move_aside(folder: Path) -> Path | None:
     except OSError as error:
         raise MachineError(f"{folder}: cannot be moved aside: {error.strerror}") from error
     return target
+
+
+def make_folder(folder: Path) -> None:
+    """Make a run folder and those around it; `MachineError` if that cannot be done."""
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+    except OSError as error:
+        raise MachineError(
+            f"{folder}: cannot be made: {error.strerror}; give another folder with --out"
+        ) from error
 
 
 @contextmanager

@@ -137,7 +137,15 @@ def propagate(text: str, *overrides: str) -> Outcome:
     stepper.psi[...] = start
     before = tuple(momentum_density(start, setup.grid, i)[1] for i in range(setup.grid.ndim))
     record = Record(
-        setup.choices, setup.incidents(), setup.central_energy(), found, before, 1, b"", ""
+        setup.choices,
+        setup.incidents(),
+        setup.central_energy(),
+        found,
+        before,
+        1,
+        b"",
+        "",
+        setup.end,
     )
     memory = Memory()
     journal = Journal(setup, stepper, Overlap.of(start, setup.grid.cell), cast("RunWriter", memory))

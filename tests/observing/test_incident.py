@@ -97,7 +97,7 @@ def test_a_mass_that_changes_under_the_packet_is_a_reason() -> None:
 
 
 def crossed_by_a_free_packet(place: float, time: float) -> float:
-    """Closed form: how much of the free Gaussian has passed a plane of a ring of 200 nm.
+    """Return how much of a free Gaussian has passed a plane of a ring of 200 nm, in closed form.
 
     Position is normal with mean -30 + v t and the width of [CohenTannoudji1977]_,
     complement G_I; each round past the plane counts.

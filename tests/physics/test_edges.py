@@ -206,3 +206,18 @@ def test_smoothing_beyond_the_domain_of_a_formula() -> None:
     grid = Grid((Axis("x", 0.0, 5.0, 49, ("walls", "walls")),))
     values = smoothed(lambda mesh: np.sqrt(mesh[0]) * (mesh[0] > 2.0), grid)
     assert np.isfinite(values).all()
+
+
+def test_a_span_goes_around_a_ring() -> None:
+    """A span of a whole periodic axis covers every cell, two halves add up to it."""
+    ring = Axis("x", -10.0, 10.0, 40, ("periodic", "periodic"))
+    assert covered_by_span(Span(-10.0, 10.0), ring) == pytest.approx(1.0)
+    left, right = covered_by_span(Span(-10.0, 0.0), ring), covered_by_span(Span(0.0, 10.0), ring)
+    assert left + right == pytest.approx(np.ones(40))
+    assert left[0] == pytest.approx(0.5)
+
+
+def test_a_span_to_an_absorbing_end_goes_on_beyond_it() -> None:
+    """Nothing is lost between a region's edge and the end of the axis."""
+    open_ended = Axis("x", -10.0, 10.0, 40)
+    assert covered_by_span(Span(-10.0, 10.0), open_ended) == pytest.approx(1.0)

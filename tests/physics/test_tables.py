@@ -1,5 +1,6 @@
 """Tables: three forms of file, round trips, and what is refused."""
 
+import os
 from collections.abc import Callable
 from pathlib import Path
 
@@ -208,3 +209,16 @@ def test_a_changed_file_is_read_anew(tmp_path: Path) -> None:
     assert read_samples(str(file), 1, (Span(),)).values.tolist() == [1, 2]
     file.write_text("0 1\n1 2\n2 5\n")
     assert read_samples(str(file), 1, (Span(),)).values.tolist() == [1, 2, 5]
+
+
+def test_a_replaced_file_is_read_again(tmp_path: Path) -> None:
+    """Another content of the same size and time of change is noticed."""
+    path = tmp_path / "line.csv"
+    path.write_text("0, 1\n1, 2\n")
+    status = path.stat()
+    assert read_samples(str(path), 1, (Span(),)).values.tolist() == [1, 2]
+    other = tmp_path / "other.csv"
+    other.write_text("0, 3\n1, 4\n")
+    os.utime(other, ns=(status.st_atime_ns, status.st_mtime_ns))
+    other.replace(path)
+    assert read_samples(str(path), 1, (Span(),)).values.tolist() == [3, 4]

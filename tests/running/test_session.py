@@ -109,6 +109,75 @@ def test_an_end_already_passed_is_refused(folder: Path) -> None:
     assert contents(folder) == kept
 
 
+def test_a_killed_extension_can_be_resumed(folder: Path) -> None:
+    """Moved and then killed, an end is kept, and so is the one before it."""
+    workflow.run(small(), folder)
+    with Session.resume(folder, until=600.0) as session:
+        session.propagate(stop_asked=after(20))
+    assert json.loads((folder / "results.json").read_text())["status"] == "interrupted"
+    with Session.resume(folder):
+        # Killed here: nothing more is written.
+        status = json.loads((folder / "results.json").read_text())["status"]
+    assert status == "running"
+    results = workflow.resume(folder)
+    assert results["time"]["value"] == pytest.approx(600.0)
+    assert results["provenance"]["former_ends"] == [400.0]
+
+
+def test_an_end_moved_without_a_checkpoint_counts(folder: Path) -> None:
+    """The scenario's end is believed where a process died between the two writings."""
+    workflow.run(small(), folder)
+    path = folder / "scenario.toml"
+    path.write_text(path.read_text().replace("end = 400.0", "end = 500.0"))
+    results = workflow.resume(folder)
+    assert results["time"]["value"] == pytest.approx(500.0)
+    assert results["provenance"]["former_ends"] == [400.0]
+
+
+def test_an_extended_run_is_still_that_of_its_scenario(folder: Path) -> None:
+    """Its own scenario is recognised; the folder's scenario keeps the spacing of frames."""
+    workflow.run(small(), folder)
+    workflow.resume(folder, until=600.0)
+    with pytest.raises(UsageError, match="this scenario already"):
+        workflow.run(small(), folder)
+    assert "frames = 13" in (folder / "scenario.toml").read_text()
+
+
+def test_a_run_that_stopped_early_can_be_taken_further(folder: Path) -> None:
+    """An explicit time overrules the threshold at which the run stopped."""
+    workflow.run(small("time.stop_when_left_below=0.1"), folder)
+    results = workflow.resume(folder, until=450.0)
+    assert results["status"] == "finished"
+    assert results["time"]["value"] == pytest.approx(450.0)
+
+
+def test_an_unsound_state_takes_no_checkpoints_place(folder: Path) -> None:
+    """Between records too, what is saved has been looked at first."""
+    with Session.start(small('output.checkpoint_every="1e-9 s"'), folder) as session:
+        session.propagate(stop_asked=after(40))
+    saved = (folder / "checkpoint.h5").read_bytes()
+    with Session.resume(folder) as session:
+        session._stepper.psi[100] = np.nan  # noqa: SLF001 - the fault has to come from somewhere
+        with pytest.raises(NumericalFault, match="not finite"):
+            session.propagate()
+    assert (folder / "checkpoint.h5").read_bytes() == saved
+    results = json.loads((folder / "results.json").read_text())
+    assert results["status"] == "failed"
+    assert results["time"]["value"] > 0
+    assert workflow.resume(folder)["status"] == "finished"
+
+
+def test_results_have_their_whole_form_from_the_start(folder: Path) -> None:
+    """Before anything is known every quantity stands there as null."""
+    with Session.start(small(), folder):
+        results = json.loads((folder / "results.json").read_text())
+    assert results["status"] == "running"
+    assert results["quantities"]["transmission"]["value"] is None
+    assert results["expectations"]["sigma_px"]["value"] is None
+    assert results["regions"]["drain"]["probability"]["value"] is None
+    assert "exit" in results["detectors"]
+
+
 def test_a_run_stops_once_little_is_left(folder: Path) -> None:
     """With stop_when_left_below the run ends at a record, early."""
     results = workflow.run(small("time.stop_when_left_below=0.1"), folder)
@@ -148,7 +217,7 @@ def test_a_folder_that_cannot_be_made(tmp_path: Path) -> None:
 
 
 def test_a_state_that_is_not_finite_stops_the_run(folder: Path) -> None:
-    """The fault names step, time and place; the last good checkpoint is kept."""
+    """The fault names step, time and place."""
     with Session.start(small(), folder) as session:
         session._stepper.psi[100] = np.nan  # noqa: SLF001 - the fault has to come from somewhere
         with pytest.raises(NumericalFault, match=r"step 0, t = 0: the state is not finite at x"):

@@ -14,6 +14,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from wavepack.errors import NumericalFault
 from wavepack.fields import declare
 
 if TYPE_CHECKING:
@@ -116,8 +117,9 @@ class Drive:
         Raises
         ------
         ValueError
-            If the drive oscillates and was not `bound`, or its formula is not
-            finite at t.
+            If the drive oscillates and was not `bound`.
+        NumericalFault
+            If its formula is not finite at t.
         """
         envelope = 1.0 if self.envelope is None else self.envelope.factor(t)
         # Outside the envelope a formula is not asked: it need not be finite there.
@@ -127,7 +129,9 @@ class Drive:
         if self.formula is not None:
             value = float(self.formula.evaluate(t=t))
             if not math.isfinite(value):
-                raise ValueError(f"drive formula: need a finite factor, got {value} at t = {t:g}")
+                raise NumericalFault(
+                    f"drive formula: need a finite factor, got {value} at t = {t:g}"
+                )
             return value
         if self.photon_energy is None:
             return self.offset

@@ -88,9 +88,22 @@ def clipped(x: RealArray, span: Span, spacing: float) -> RealArray:
 
 
 def covered_by_span(span: Span, axis: Axis) -> RealArray:
-    """Return the part of each cell, one spacing wide, that a span covers; exact."""
+    """Return the part of each cell, one spacing wide, that a span covers; exact.
+
+    The first cell of a periodic axis has half of itself before the other end. A
+    span that reaches an end that absorbs goes on beyond it.
+    """
     x, half = axis.coordinates, axis.spacing / 2
-    covered = np.minimum(x + half, span.upper) - np.maximum(x - half, span.lower)
+    lower, upper = span.lower, span.upper
+    if axis.ends[0] != "periodic":
+        lower = -math.inf if lower <= axis.start else lower
+        upper = math.inf if upper >= axis.stop else upper
+        covered = np.minimum(x + half, upper) - np.maximum(x - half, lower)
+        return np.asarray(np.clip(covered / axis.spacing, 0.0, 1.0))
+    lower, upper = max(lower, axis.start), min(upper, axis.stop)
+    covered = np.minimum(x + half, upper) - np.maximum(x - half, lower)
+    covered = np.clip(covered, 0.0, axis.spacing)
+    covered[0] += max(0.0, upper - max(lower, axis.stop - half))
     return np.asarray(np.clip(covered / axis.spacing, 0.0, 1.0))
 
 

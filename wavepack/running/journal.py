@@ -85,6 +85,7 @@ class Journal:
     def __init__(self, setup: Setup, stepper: Stepper, overlap: Overlap, writer: RunWriter) -> None:
         self.detectors: tuple[FluxDetector, ...] = setup.detectors(stepper.clock)
         self.beyond_band = 0.0
+        self.latest: Standing | None = None
         self.dwell = Dwell(len(setup.book.names))
         self._setup = setup
         self._stepper = stepper
@@ -131,6 +132,7 @@ class Journal:
         standing = Standing(snapshot.step, snapshot.time, seen, absorbed)
         self.beyond_band = max(self.beyond_band, seen.beyond)
         self._check(standing, snapshot.psi)
+        self.latest = standing
         return standing
 
     def drain(self) -> None:

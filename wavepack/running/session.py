@@ -1,6 +1,7 @@
 """One process at work on a run: it starts or goes on, propagates, and finishes."""
 
 import json
+import math
 import time
 from collections.abc import Callable
 from contextlib import ExitStack
@@ -17,7 +18,7 @@ from wavepack.archive import checkpoint
 from wavepack.archive.disk import write_atomically
 from wavepack.archive.layout import CHECKPOINT_FILE, RUN_FILE, SCENARIO_FILE
 from wavepack.archive.lock import RunLock
-from wavepack.archive.results import write_results
+from wavepack.archive.results import read_results, write_results
 from wavepack.archive.runlog import RunLog
 from wavepack.archive.writer import RunWriter
 from wavepack.errors import NumericalFault, UsageError, WavepackError
@@ -29,9 +30,11 @@ from wavepack.running.plan import run_plan
 from wavepack.running.planner import given_knowledge, shared_knowledge
 from wavepack.running.state import Record
 from wavepack.running.summary import summarise
+from wavepack.running.tables import check_tables, copy_tables
 from wavepack.scenario.build import Setup, given
 from wavepack.scenario.load import load_scenario
-from wavepack.scenario.schema import Scenario
+from wavepack.scenario.schema import Scenario, TimeSpec
+from wavepack.scenario.tables import relative_to, with_copies
 from wavepack.scenario.write import to_toml
 from wavepack.stepping.march import Snapshot, march
 
@@ -69,8 +72,17 @@ class Session:
         self._journal: Journal
 
     @classmethod
-    def start(cls, scenario: Scenario, folder: Path, *, threads: int | None = None) -> Self:
+    def start(
+        cls,
+        scenario: Scenario,
+        folder: Path,
+        *,
+        threads: int | None = None,
+        setup: Setup | None = None,
+    ) -> Self:
         """Lay out a new run in a folder that exists and holds none.
+
+        ``setup`` is the scenario made ready, if it is already.
 
         Raises
         ------
@@ -79,10 +91,11 @@ class Session:
         """
         with ExitStack() as resources:
             resources.enter_context(threadpool_limits(1))
+            # A scenario that is refused leaves nothing in the folder.
+            setup = setup or Setup(scenario)
             resources.enter_context(RunLock(folder))
             session = cls(folder, scenario, resources)
             session._log.write("starting", wavepack=__version__, title=scenario.title)
-            setup = Setup(scenario)
             session.scenario = as_run(scenario)
             session._begin(setup, threads or setup.default_threads())
             session._resources = resources.pop_all()
@@ -139,6 +152,7 @@ class Session:
         """
         try:
             status, snapshot = self._march(stop_asked, tell)
+            return self._conclude(status, snapshot)
         except NumericalFault as fault:
             self._log.write("failed", reason=str(fault))
             self._fail(fault)
@@ -146,7 +160,6 @@ class Session:
         except WavepackError as error:
             self._log.write("stopped by an error", reason=str(error))
             raise
-        return self._conclude(status, snapshot)
 
     @property
     def finished(self) -> bool:
@@ -172,7 +185,8 @@ class Session:
         before = tuple(momentum_density(psi, setup.grid, i)[1] for i in range(setup.grid.ndim))
         incidents, central = setup.incidents(), setup.central_energy()
         overlap = Overlap.of(psi, setup.grid.cell)
-        text = to_toml(self.scenario)
+        read, self.scenario = self.scenario, with_copies(self.scenario)
+        text = self._text()
         plan = run_plan(setup, text)
         del psi
         with shared_knowledge():
@@ -187,7 +201,10 @@ class Session:
             threads,
             knowledge,
             spectral.planner_version(),
+            setup.end,
+            tables=setup.tables,
         )
+        copy_tables(read, self.folder, setup.tables)
         write_atomically(self.folder / SCENARIO_FILE, text.encode())
         writer = RunWriter.create(self.folder, plan)
         self._assemble(setup, stepper, overlap, writer)
@@ -200,8 +217,10 @@ class Session:
         if found.note:
             self.notes.append(found.note)
         record = Record.restored(state)
+        check_tables(self.scenario, self.folder, record.tables)
         if until is not None:
-            record = self._extend(record, until)
+            self._extend(record, until)
+        record = record.until(given(self.scenario.time.end, "time.end"))
         setup = Setup(self.scenario, record.choices)
         threads = threads or record.threads
         with given_knowledge(record.knowledge):
@@ -217,13 +236,15 @@ class Session:
         self._record = replace(record, threads=threads)
         self._assemble(setup, stepper, Overlap.restored(found.section("journal/overlap")), writer)
         self._journal.restore(found.section("journal"))
+        snapshot = Snapshot(record.step, record.step * setup.dt, stepper.psi)
+        write_results(self.folder, self._summary("running", self._journal.standing(snapshot)))
         if until is not None:
-            writer.replace_scenario(to_toml(self.scenario))
+            writer.replace_scenario(self._text())
         for note in self.notes:
             self._log.write("note", text=note)
         self._log.write("resumed", step=record.step, reached=record.step * setup.dt)
 
-    def _extend(self, record: Record, until: float) -> Record:
+    def _extend(self, record: Record, until: float) -> None:
         """Move the scenario's end, here and in the folder."""
         dt = record.choices.dt
         reached = record.step * dt
@@ -233,12 +254,18 @@ class Session:
                 f"--until {until:g} {unit}: the run has already reached {reached:g} {unit}; "
                 "give a later time"
             )
-        steps = max(record.step, -int(-(until / dt * (1 - 1e-12)) // 1))
+        steps = max(record.step, math.ceil(until / dt * (1 - 1e-12)))
         former = given(self.scenario.time.end, "time.end")
-        self.scenario = replace(self.scenario, time=replace(self.scenario.time, end=steps * dt))
-        write_atomically(self.folder / SCENARIO_FILE, to_toml(self.scenario).encode())
+        # Whoever asks for more than a run that stopped early wants it to go on.
+        least = self.scenario.time.stop_when_left_below
+        stopped = read_results(self.folder)["status"] == "stopped_early"
+        end = TimeSpec(end=steps * dt, stop_when_left_below=None if stopped else least)
+        spacing = record.choices.span / (record.choices.frames - 1)
+        frames = max(self.scenario.output.frames, round(steps * dt / spacing) + 1)
+        output = replace(self.scenario.output, frames=frames)
+        self.scenario = replace(self.scenario, time=end, output=output)
+        write_atomically(self.folder / SCENARIO_FILE, self._text().encode())
         self._log.write("end moved", former=former, end=steps * dt)
-        return replace(record, former_ends=(*record.former_ends, former))
 
     def _assemble(self, setup: Setup, stepper: Any, overlap: Overlap, writer: RunWriter) -> None:  # noqa: ANN401 - a Stepper
         self._setup = setup
@@ -270,6 +297,9 @@ class Session:
                     return "interrupted", snapshot
             every = self.scenario.output.checkpoint_every
             if snapshot.step == start or now - saved > every:
+                if standing is None:
+                    # Nothing unsound may take the place of a good checkpoint.
+                    self._journal.standing(snapshot)
                 self._save(snapshot)
                 saved = time.monotonic()
         if start == schedule.steps:
@@ -316,8 +346,12 @@ class Session:
             self._writer.write_momentum(self._record.before[0], after)
 
     def _fail(self, fault: NumericalFault) -> None:
-        results = self._summary("failed", None) | {"fault": str(fault)}
+        results = self._summary("failed", self._journal.latest) | {"fault": str(fault)}
         write_results(self.folder, results)
+
+    def _text(self) -> str:
+        """Return the scenario as the folder holds it."""
+        return to_toml(relative_to(self.scenario, self.folder))
 
     def _summary(self, status: str, standing: Standing | None) -> dict[str, Any]:
         return summarise(
@@ -326,13 +360,20 @@ class Session:
             self._record,
             self._journal,
             standing,
-            self.scenario,
+            relative_to(self.scenario, self.folder),
             self._writer.column,
         )
 
 
 def as_run(scenario: Scenario) -> Scenario:
-    """Return the scenario with the step that reaches its end in whole steps."""
+    """Return the scenario with its orders, and the step that reaches its end in whole steps."""
     end = given(scenario.time.end, "time.end")
-    propagator = replace(scenario.propagator, step=end / Setup.whole_steps(scenario))
+    spec = scenario.propagator
+    implicit = spec.method == "crank-nicolson"
+    propagator = replace(
+        spec,
+        step=end / Setup.whole_steps(scenario),
+        order=spec.order or 2,
+        space_order=spec.space_order or 2 if implicit else None,
+    )
     return replace(scenario, propagator=propagator)

@@ -2,7 +2,7 @@
 
 import json
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from typing import Any
 
 import numpy as np
@@ -39,8 +39,12 @@ class Record:
         The step of the state.
     wall_seconds : float
         Time spent so far.
+    end : float
+        When the run is to end [time].
     former_ends : tuple of float
         Ends of the run before it was extended [time].
+    tables : mapping
+        SHA-256 of each table by its name from the run folder.
     """
 
     choices: Choices
@@ -51,13 +55,21 @@ class Record:
     threads: int
     knowledge: bytes
     planner: str
+    end: float
     step: int = 0
     wall_seconds: float = 0.0
     former_ends: tuple[float, ...] = ()
+    tables: Mapping[str, str] = field(default_factory=dict)
 
     def at(self, step: int, wall_seconds: float) -> "Record":
         """Return the record at a later step."""
         return replace(self, step=step, wall_seconds=wall_seconds)
+
+    def until(self, end: float) -> "Record":
+        """Return the record with another end; the one it had is kept among the former."""
+        if end == self.end:
+            return self
+        return replace(self, end=end, former_ends=(*self.former_ends, self.end))
 
     def save(self) -> dict[str, Any]:
         """Return plain values and arrays for a checkpoint."""
@@ -69,7 +81,9 @@ class Record:
             "planner": self.planner,
             "step": self.step,
             "wall_seconds": self.wall_seconds,
+            "end": self.end,
             "former_ends": self.former_ends,
+            "tables": dict(self.tables),
             "reasons": {name: i.reason for name, i in self.incidents.items()},
             "phase_reasons": {name: i.phase_reason for name, i in self.incidents.items()},
         }

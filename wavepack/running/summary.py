@@ -4,10 +4,14 @@ import platform
 from importlib.metadata import PackageNotFoundError, version
 from typing import Any
 
+import numpy as np
+
 from wavepack import __version__
 from wavepack.analysis.outcome import detector_results, quantity, sidebands
 from wavepack.archive.layout import text_sha256
 from wavepack.observing.flux import FluxDetector
+from wavepack.observing.moments import Moments
+from wavepack.observing.regions import PARTS
 from wavepack.running.history import Columns, dwell_of, tail_results, times_at
 from wavepack.running.journal import Journal, Standing
 from wavepack.running.plan import unit_symbols
@@ -40,14 +44,13 @@ def summarise(
         "title": scenario.title,
         "time": {"value": step * setup.dt, "unit": units["time"]},
     }
-    if standing is not None:
-        results |= _standing_results(setup, record, standing, units)
-        results["detectors"] = {
-            detector.name: _detector(detector, setup, record, units)
-            for detector in journal.detectors
-        }
-        if columns is not None:
-            _add_history(results, columns, setup, record, journal, standing, units)
+    seen = nothing_seen(setup) if standing is None else standing
+    results |= _standing_results(setup, record, seen, units)
+    results["detectors"] = {
+        detector.name: _detector(detector, setup, record, units) for detector in journal.detectors
+    }
+    if standing is not None and columns is not None:
+        _add_history(results, columns, setup, record, journal, standing, units)
     results["numerics"] = _numerics(setup, record, journal, units)
     results["provenance"] = _provenance(record, scenario)
     return results
@@ -84,6 +87,14 @@ def _standing_results(
         for i, name in enumerate(setup.book.names)
     }
     return {"quantities": quantities, "regions": regions, "expectations": expectations}
+
+
+def nothing_seen(setup: Setup) -> Standing:
+    """Return a standing in which nothing is known: every value becomes null."""
+    unknown, along = float("nan"), (float("nan"),) * setup.grid.ndim
+    parts, regions = np.full(len(PARTS), unknown), np.full(len(setup.book.names), unknown)
+    moments = Moments(unknown, unknown, unknown, along, along, along, along, parts, regions)
+    return Standing(0, 0.0, moments, np.concatenate([parts, regions]))
 
 
 def _add_history(
@@ -134,8 +145,8 @@ def _numerics(
         "step": {"value": setup.dt, "unit": units["time"]},
         "steps": setup.steps,
         "method": propagator.method,
-        "order": propagator.order,
-        "space_order": propagator.space_order,
+        "order": propagator.order or 2,
+        "space_order": None if setup.spectral else propagator.space_order or 2,
         "threads": record.threads,
         "record_every": choices.record_every,
         "detectors": {

@@ -24,7 +24,9 @@ from wavepack.physics.kinetic import SpectralKinetic, StaggeredKinetic, link_pos
 from wavepack.physics.landscape import Landscape
 from wavepack.physics.packets import initial_state
 from wavepack.scenario.content import Content, content
+from wavepack.scenario.places import placed
 from wavepack.scenario.schema import DetectorSpec, RegionSpec, Scenario
+from wavepack.scenario.tables import digests
 from wavepack.stepping.crank_nicolson import CrankNicolson
 from wavepack.stepping.schedule import Schedule, frame_steps
 from wavepack.stepping.scheme import Clock, Fill, Scheme, Stepper, leave_empty
@@ -52,8 +54,8 @@ class Choices:
 
     Attributes
     ----------
-    dt, span : float
-        Time step, and the time over which the frames are spread [time].
+    dt, span, frames : float, float, int
+        Time step, and the time over which so many frames are spread [time].
     strengths : tuple of float
         Strength of each absorbing layer [energy].
     reference : float
@@ -68,6 +70,7 @@ class Choices:
 
     dt: float
     span: float
+    frames: int
     strengths: tuple[float, ...]
     reference: float
     read_every: int
@@ -101,11 +104,19 @@ class Setup:
     Raises
     ------
     ScenarioError
-        If the initial state cannot be made or regions with a role overlap.
+        If the potential is not finite, the initial state cannot be made, or
+        regions with a role overlap.
+    UsageError
+        If a table cannot be read.
     """
 
     def __init__(self, scenario: Scenario, choices: Choices | None = None) -> None:
+        with placed(scenario):
+            self._prepare(scenario, choices)
+
+    def _prepare(self, scenario: Scenario, choices: Choices | None) -> None:
         self.scenario = scenario
+        self.tables = digests(scenario)
         self.particle = scenario.particle
         self.grid = Grid(
             tuple(
@@ -227,9 +238,7 @@ class Setup:
 
     def schedule(self) -> Schedule:
         """Return the stops, up to the scenario's end."""
-        frames = frame_steps(
-            self.scenario.output.frames, self.choices.span, self.dt, self.steps * self.dt
-        )
+        frames = frame_steps(self.choices.frames, self.choices.span, self.dt, self.steps * self.dt)
         return Schedule(
             self.dt,
             self.steps,
@@ -336,7 +345,6 @@ class Setup:
                         "region",
                         f"regions with a role overlap ({names}): some point is claimed "
                         f'{claimed:.3g} times; give one of them role = "none" or move its edge',
-                        file=self.scenario.name,
                     )
                 ]
             )
@@ -377,6 +385,7 @@ class Setup:
         return Choices(
             self.dt,
             self.end,
+            self.scenario.output.frames,
             strengths,
             reference,
             read,
