@@ -16,7 +16,7 @@ over points not depend on where the jump falls between them.
 """
 
 import math
-from typing import TYPE_CHECKING, Final, Literal
+from typing import TYPE_CHECKING, Any, Final, Literal
 
 import numpy as np
 import numpy.typing as npt
@@ -150,7 +150,7 @@ class _Test:
 
     def lengths(
         self, starts: tuple[RealArray, ...], axis: int, count: int
-    ) -> tuple[RealArray, npt.NDArray[np.int64]]:
+    ) -> tuple[RealArray, npt.NDArray[np.signedinteger[Any]]]:
         """Return for lines one cell long the covered share, and how often it changes.
 
         ``starts`` are the lines' first points, vectors; each has ``count`` samples
@@ -170,7 +170,7 @@ class _Test:
         behind = (u[before + 1] - (lower + upper) / 2) * np.where(first, -1.0, 1.0)
         lines = len(found)
         shares = found[:, :-1] @ np.diff(u) + np.bincount(line, behind, lines)
-        return shares, np.bincount(line, minlength=lines)
+        return np.asarray(shares, dtype=float), np.bincount(line, minlength=lines)
 
     def _on_lines(self, starts: tuple[RealArray, ...], axis: int, u: RealArray) -> Mask:
         along = starts[axis] + self._grid.axes[axis].spacing * u
@@ -223,7 +223,7 @@ def _measured(test: _Test, grid: Grid, cells: npt.NDArray[np.int64]) -> RealArra
         shares, changes = test.lengths(starts, axis, LINES)
         found.append((shares.reshape(-1, LINES).mean(1), changes.reshape(-1, LINES).sum(1)))
     (along_x, crossed_x), (along_y, crossed_y) = found
-    return np.where(crossed_x >= crossed_y, along_x, along_y)
+    return np.asarray(np.where(crossed_x >= crossed_y, along_x, along_y))
 
 
 def _parts(shares: RealArray) -> npt.NDArray[np.uint32]:

@@ -91,7 +91,9 @@ def read_samples(file: str, ndim: int, spans: tuple[Span, ...], *, wave: bool = 
         status = os.stat(file)  # noqa: PTH116 - one look gives time and size
     except OSError as error:
         raise ValueError(f"need a readable file, got {file}: {error.strerror}") from None
-    return _read(file, ndim, spans, wave=wave, changed=status.st_mtime_ns, length=status.st_size)
+    # Copying may carry the time of the last change along, but not the other two.
+    changed = (status.st_mtime_ns, status.st_ctime_ns, status.st_ino)
+    return _read(file, ndim, spans, wave=wave, changed=changed, length=status.st_size)
 
 
 def interpolated(samples: Samples, coordinates: tuple[RealArray, ...]) -> Values:
@@ -117,7 +119,13 @@ def outside(samples: Samples, coordinates: tuple[RealArray, ...]) -> npt.NDArray
 
 @lru_cache(maxsize=8)
 def _read(
-    file: str, ndim: int, spans: tuple[Span, ...], *, wave: bool, changed: int, length: int
+    file: str,
+    ndim: int,
+    spans: tuple[Span, ...],
+    *,
+    wave: bool,
+    changed: tuple[int, ...],
+    length: int,
 ) -> Samples:
     del changed
     name = Path(file).name

@@ -13,6 +13,7 @@ from wavepack.physics.potentials import SHAPES
 from wavepack.physics.units import ATOMIC, UnitSystem
 from wavepack.scenario.lines import LineMap, Path, syntax_line
 from wavepack.scenario.overrides import apply_overrides
+from wavepack.scenario.places import Places
 from wavepack.scenario.reader import UNREADABLE, Reader, nearest, shown
 from wavepack.scenario.rules import Draft, check_rules
 from wavepack.scenario.schema import (
@@ -99,7 +100,8 @@ def parse_scenario(
             [Fault("", f"not TOML: {error}", syntax_line(error, text), file)]
         ) from None
     overridden, faults = apply_overrides(raw, overrides)
-    reader = Reader(file, lines, overridden, (folder or FilePath()).resolve(), UnitSystem())
+    places = Places(file, lines, overridden)
+    reader = Reader(places, (folder or FilePath()).resolve(), UnitSystem())
     reader.faults += faults
     scenario = _read(raw, reader)
     if scenario is None:
@@ -134,8 +136,9 @@ def _read(raw: dict[str, Any], reader: Reader) -> Scenario | None:
         detector=tuple(draft.detector),
         output=draft.output,
         accuracy=_optional_table(raw, "accuracy", AccuracySpec, reader),
-        name=reader.file,
+        name=reader.places.file,
         raw=raw,
+        places=reader.places,
     )
 
 

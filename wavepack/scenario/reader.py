@@ -6,14 +6,17 @@ import re
 from collections.abc import Iterable, Mapping
 from dataclasses import MISSING, dataclass, fields
 from pathlib import Path as FilePath
-from typing import Any, Final
+from typing import TYPE_CHECKING, Any, Final
 
-from wavepack.errors import Fault
 from wavepack.fields import Span, Spec, specs
 from wavepack.physics.drives import Drive
 from wavepack.physics.expressions import Expression, ExpressionError, compile_expression
 from wavepack.physics.units import UnitSystem
-from wavepack.scenario.lines import LineMap, Path
+from wavepack.scenario.lines import Path
+from wavepack.scenario.places import Places
+
+if TYPE_CHECKING:
+    from wavepack.errors import Fault
 
 NAME: Final = re.compile(r"[A-Za-z][A-Za-z0-9_-]*")
 MAX_SHOWN: Final = 60
@@ -33,19 +36,13 @@ class Reader:
 
     Attributes
     ----------
-    file : str
-        Name of the scenario's file, for messages.
-    lines : LineMap
-        Where its keys stand.
-    overridden : mapping
-        Paths set on the command line, with their text.
+    places : Places
+        Where its keys stand, for messages.
     folder : Path
         Where file names start from.
     """
 
-    file: str
-    lines: LineMap
-    overridden: Mapping[Path, str]
+    places: Places
     folder: FilePath
     units: UnitSystem
     axes: tuple[str, ...] = ()
@@ -56,24 +53,9 @@ class Reader:
 
     def fault(self, path: Path, message: str) -> None:
         """Note a fault at a key; a message that quotes a long value is cut."""
-        key = dotted(path)
         if len(message) > MOST_TOLD:
             message = f"{message[: MOST_TOLD - 3]}..."
-        text = self._override(path)
-        if text is None:
-            self.faults.append(Fault(key, message, self.lines.find(path), self.file))
-        else:
-            self.faults.append(Fault(key, message, None, f"--set {text}"))
-
-    def _override(self, path: Path) -> str | None:
-        """Return the override that set a path, or made the tables around its own."""
-        for length in range(len(path), 0, -1):
-            if path[:length] in self.overridden:
-                return self.overridden[path[:length]]
-        if path in self.lines:
-            return None
-        made = (text for own, text in self.overridden.items() if own[: len(path)] == path)
-        return next(made, None)
+        self.faults.append(self.places.fault(path, message))
 
     def known_keys(self, raw: Mapping[str, Any], known: Iterable[str], path: Path) -> None:
         """Note a fault for every key that is not known, naming the nearest."""
@@ -215,11 +197,6 @@ class Reader:
             raise ValueError(f"need a list of tables, got {shown(raw)}")
         items = [self.read(cls, item, (*path, i)) for i, item in enumerate(raw)]
         return UNREADABLE if UNREADABLE in items else tuple(items)
-
-
-def dotted(path: Path) -> str:
-    """Return a path as it is written with ``--set``."""
-    return ".".join(str(part) for part in path)
 
 
 def nearest(key: str, known: Iterable[str]) -> str:

@@ -13,6 +13,7 @@ from wavepack.physics.packets import Packet
 from wavepack.physics.particle import Particle
 from wavepack.physics.shapes import Piece
 from wavepack.physics.units import UnitSystem
+from wavepack.scenario.places import Places
 
 ENDS = ("absorbing", "walls", "periodic")
 DIRECTIONS = ("+x", "-x", "+y", "-y")
@@ -376,3 +377,4 @@ class Scenario:
     accuracy: AccuracySpec | None
     name: str = field(default="scenario", compare=False)
     raw: Mapping[str, Any] = field(default_factory=dict, compare=False, repr=False)
+    places: Places = field(default_factory=Places, compare=False, repr=False)
