@@ -7,8 +7,9 @@ import pytest
 
 from tests.closed_forms.reference_values import Row, rows
 from tests.tolerances import GUIDED
-from wavepack.analysis import crosscheck
-from wavepack.analysis.passage import NotApplicableError, passage_of
+from wavepack.analysis import stationary_average
+from wavepack.analysis.incoming import NotApplicableError
+from wavepack.analysis.passage import passage_of
 from wavepack.analysis.stationary_channels import Guide, guide_of
 from wavepack.physics.exact import sech2_barrier
 from wavepack.scenario.load import parse_scenario
@@ -109,8 +110,8 @@ def test_coupled_modes_conserve_the_current(walls: str) -> None:
 
 def test_average_from_the_other_side(monkeypatch: pytest.MonkeyPatch) -> None:
     """What comes from the right gets through as the closed form says, within the error stated."""
-    monkeypatch.setitem(crosscheck.AVERAGE, 2, (1e-3, 64))
-    solved = crosscheck.solve(passage_of(scenario(SADDLE, PLACE=160.0, TOWARD="-x")))
+    monkeypatch.setitem(stationary_average.AVERAGE, 2, (1e-3, 64))
+    solved = stationary_average.solve(passage_of(scenario(SADDLE, PLACE=160.0, TOWARD="-x")))
     assert solved.passage.from_upper
     energies = np.linspace(*solved.incoming.energies, 4001)
     level, c = solved.incoming.levels[0], solved.incoming.c

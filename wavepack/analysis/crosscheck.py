@@ -8,16 +8,13 @@ with dP/dE of the packet's momenta and T(E) of `wavepack.analysis.stationary` or
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass
-from typing import Any, Final, Protocol
+from typing import Any, Final
 
 import numpy as np
 
 from wavepack.analysis.outcome import quantity
-from wavepack.analysis.passage import Incoming, Passage, passage_of
-from wavepack.analysis.quadrature import integral
-from wavepack.analysis.stationary import Line
-from wavepack.analysis.stationary_channels import guide_of
+from wavepack.analysis.passage import Passage, passage_of
+from wavepack.analysis.stationary_average import Solved, solve
 from wavepack.arrays import Mask, RealArray
 from wavepack.errors import UsageError
 from wavepack.fields import Span
@@ -32,37 +29,10 @@ STARTS_BACK: Final = 1e-6
 MISSES: Final = 0.03
 #: Without a stated error, what differs by more is not said to agree.
 NEAR: Final = 1e-2
-#: Tolerances of the averages, and how many energies they may take, by dimension.
-AVERAGE: Final = {1: (1e-8, 1 << 13), 2: (1e-5, 192)}
 #: In two dimensions so many energies of a detector are solved at most.
 MOST_ENERGIES: Final = 48
 #: Lines of the table shown for each detector.
 SHOWN: Final = 10
-
-
-class Scatterer(Protocol):
-    """What gives transmission and reflection by energy."""
-
-    def scatter(self, energies: RealArray) -> tuple[RealArray, RealArray]:
-        """Return both at total energies [energy]."""
-        ...
-
-
-@dataclass(frozen=True)
-class Solved:
-    """The stationary side: by energy, and averaged over the packet.
-
-    ``through`` and ``back`` are what leaves by the far and the near lead after
-    infinite time, ``error`` how far they may be off.
-    """
-
-    passage: Passage
-    incoming: Incoming
-    scatterer: Scatterer
-    method: str
-    through: float
-    back: float
-    error: float
 
 
 def crosscheck(scenario: Scenario, results: Mapping[str, Any]) -> dict[str, Any]:
@@ -108,74 +78,6 @@ def crosscheck(scenario: Scenario, results: Mapping[str, Any]) -> dict[str, Any]
         if spec.name in results.get("detectors", {})
     }
     return found | _judged(found)
-
-
-def solve(passage: Passage) -> Solved:
-    """Return the stationary side of a passage."""
-    scatterer, incoming, method, doubt = _prepared(passage)
-    tolerance, most = AVERAGE[passage.grid.ndim]
-    low, high = incoming.energies
-    base = float(incoming.levels.min())
-    ends = [math.sqrt(max(e - base, 0.0) / incoming.c) for e in (low, high)]
-
-    def density(q: RealArray) -> RealArray:
-        return incoming.weight(base + incoming.c * q**2) * 2 * incoming.c * q
-
-    peak = float(density(np.linspace(ends[0], ends[1], 200)).max())
-
-    def weighted(q: RealArray) -> RealArray:
-        energies = base + incoming.c * q**2
-        weight = density(q)
-        heavy = weight > tolerance / 100 * peak
-        t, r = np.zeros(q.size), np.zeros(q.size)
-        if heavy.any():
-            t[heavy], r[heavy] = scatterer.scatter(energies[heavy])
-        return np.stack([weight * t, weight * r])
-
-    middle = np.linspace(ends[0], ends[1], 9 if passage.grid.ndim == 1 else 3)
-    (through, back), error = integral(weighted, [float(q) for q in middle], tolerance, most)
-    return Solved(
-        passage,
-        incoming,
-        scatterer,
-        method,
-        float(through),
-        float(back) + incoming.away,
-        error + doubt,
-    )
-
-
-def _prepared(passage: Passage) -> tuple[Scatterer, Incoming, str, float]:
-    """Return the calculation, what comes in, what it is called and how far it may be off."""
-    if passage.grid.ndim == 2:
-        guide = guide_of(passage)
-        low, high = guide.incoming.energies
-        energies = np.linspace(low, high, 65)[1:]
-        weight = guide.incoming.weight(energies)
-        some = energies[np.argsort(weight)[-5:]]
-        doubt = float(guide.doubt(some).max()) + guide.outside
-        points, modes, _ = guide.fine.matrices.shape
-        text = (
-            f"{modes} coupled modes across, differences of order 4 along on {points} points "
-            "extrapolated, transmitting ends"
-        )
-        return guide, guide.incoming, text, doubt
-    line = Line(
-        passage.pieces,
-        passage.scenario.particle,
-        *passage.inner,
-        passage.line.spacing,
-        passage.from_upper,
-    )
-    lead = line.lead(far=False)
-    s, psi = passage.way
-    incoming = Incoming(s, psi, np.array([lead.height]), lead.c, passage.line.spacing)
-    text = (
-        "exact matrices of a stack of layers"
-        if line.constant_by_layers
-        else "integration of the stationary equation, adaptive, of order 8"
-    )
-    return line, incoming, text, 1e-8
 
 
 def _expected(solved: Solved, role: str) -> tuple[float | None, str | None]:

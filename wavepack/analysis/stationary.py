@@ -165,7 +165,7 @@ class Line:
         u, w = np.ones(energies.size, dtype=complex), 1j * z_far / scale
         growth = np.zeros(energies.size)
         for first, last in reversed(list(pairwise(self.cuts))):
-            for start, stop in self._short(first, last, float(energies.min())):
+            for start, stop in self.short(first, last, float(energies.min())):
                 u, w = self._carried((u, w), energies, scale, (start, stop), (first, last))
                 size = np.hypot(np.abs(u), np.abs(w))
                 u, w, growth = u / size, w / size, growth + np.log(size)
@@ -178,7 +178,7 @@ class Line:
         ratio = np.abs(outgoing) / np.where(is_open, np.abs(incoming), 1.0)
         return np.where(both, t, 0.0), np.where(is_open, ratio**2, 1.0)
 
-    def _short(self, first: float, last: float, energy: float) -> list[tuple[float, float]]:
+    def short(self, first: float, last: float, energy: float) -> list[tuple[float, float]]:
         """Return a piece of the way cut into short ones, the last first, each backward."""
         count = max(2, min(4096, math.ceil((last - first) / self.resolution)))
         edge = EDGE_DISTANCE * self.length
