@@ -114,10 +114,9 @@ _LIST: Final = (
         "P14",
         "level, record of 500",
         2.5e-5,
-        "a window of exp(-5 t^2/T^2): neighbours "
-        "0.029 away leave exp(-(0.029 T)^2/20) of their weight",
+        "window exp(-5 t^2/T^2): neighbours 0.029 away leave exp(-(0.029 T)^2/20) of their weight",
     ),
-    Check("P14", "level, record of 2000", 5e-6, "round-off of the phase, order 4 in the step"),
+    Check("P14", "level, record of 2000", 1e-6, "order 4 in the step; side lobes e^-12 high"),
     Check("P15", "level", 1e-8, "the table's last digit"),
     Check("P18", "sidebands of a packet", 2e-4, _EDGE + "; flux between the bands"),
     Check("P18", "sidebands of the table", 5e-4, _PACKET),

@@ -75,8 +75,8 @@ def averaged(outcome: Outcome, sidebands: Callable[[float], exact.Sidebands]) ->
             "detector.exit.energies.to=1.21",
         ), id="1.02 eV", marks=pytest.mark.full),
         pytest.param(0.205, 0.01, 0.01, 100.0, (
-            "packet.sigma=240.0", "packet.center=-1300.0", "grid.x.from=-3200.0",
-            "grid.x.to=1300.0", "grid.x.points=9000", "time.end=3500.0",
+            "packet.sigma=320.0", "packet.center=-1400.0", "grid.x.from=-3100.0",
+            "grid.x.to=1300.0", "grid.x.points=9000", "propagator.step=0.2", "time.end=3500.0",
             "detector.exit.x=300.0", "detector.exit.energies.from=0.16",
             "detector.exit.energies.to=0.25", "absorber.width=700.0",
         ), id="0.205 eV", marks=pytest.mark.full),
