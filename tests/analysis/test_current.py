@@ -60,6 +60,16 @@ def test_current_of_an_open_channel_is_ohmic() -> None:
         assert found.outside < 1e-12 * QUANTUM
 
 
+def test_current_over_a_step_is_logarithmic() -> None:
+    """A step of T at E0 lets k_B T ln[(1 + e^((mu_L-E0)/k_B T))/(1 + e^((mu_R-E0)/k_B T))] pass."""
+    energies = np.sort(np.concatenate((ENERGIES, [0.95 - 1e-9, 0.95 + 1e-9])))
+    step = Transmission(energies, np.where(energies > 0.95, 1.0, 0.0))
+    kt = BOLTZMANN * 300 / CHARGE
+    left, right = (math.log1p(math.exp((level - 0.95) / kt)) for level in (0.98, 0.9))
+    found = current(step, Leads(0.98, 0.9, 300.0))
+    assert found.value == pytest.approx(QUANTUM * kt * (left - right), rel=1e-6)
+
+
 def test_current_density_of_open_leads_without_temperature() -> None:
     """J = e m (mu_L^2 - mu_R^2) / 4 pi^2 hbar^3 for T = 1 at T = 0."""
     found = current_density(OPEN, Leads.biased(0.9, 0.35), 0.067)

@@ -4,9 +4,11 @@ from pathlib import Path
 
 import pytest
 
+from tests.running.conftest import contents
 from wavepack import workflow
 from wavepack.archive.reader import open_run
 from wavepack.reporting.tables import as_text
+from wavepack.running.session import Session
 from wavepack.scenario.load import parse_scenario
 
 LEAK = """
@@ -87,3 +89,19 @@ def test_the_rest_goes_where_it_was_foretold(tmp_path: Path) -> None:
     assert "lifetime of held" in as_text(early)
     probability = open_run(tmp_path / "run").read("regions/held/probability")
     assert probability[-1] == pytest.approx(late["regions"]["held"]["probability"]["value"])
+
+
+def test_times_of_a_resumed_run_have_the_same_bits(tmp_path: Path) -> None:
+    """Dwell time, tails and all else of a run that was interrupted are those of an unbroken one."""
+    whole, broken = tmp_path / "whole", tmp_path / "broken"
+    brief = parse_scenario(LEAK, overrides=("time.end=60", "output.record_every=0.2"))
+    found = workflow.run(brief, whole)
+    broken.mkdir()
+    stops = iter(range(10**6))
+    with Session.start(brief, broken) as session:
+        early = session.propagate(stop_asked=lambda: next(stops) > 100)
+    assert early["status"] == "interrupted"
+    workflow.resume(broken)
+    assert contents(broken) == contents(whole)
+    spent = found["regions"]["held"]["dwell_time"]["value"]
+    assert 0.5 * 60 < spent < 60
