@@ -23,6 +23,8 @@ def line_of(text: str, start: str) -> int:
     return next(i for i, line in enumerate(text.split("\n"), 1) if line.startswith(start))
 
 
+ABSORBER = "[absorber]\nwidth = 40.0\n"
+
 #: What is replaced by what; where the fault stands; its key; what the message holds.
 CASES = [
     # texts and keys
@@ -201,12 +203,33 @@ def test_an_eigenstate_needs_pieces_that_exist() -> None:
     assert "no potential is named wall; named: barrier" in faults_of(text)[0].message
 
 
+@pytest.mark.parametrize("ends", ["walls", "periodic"])
+def test_an_absorber_needs_an_absorbing_end(ends: str) -> None:
+    """Layers where no end absorbs would do nothing; the scenario is refused."""
+    text = LINE.replace("2048 }", f'2048, ends = "{ends}" }}')
+    (fault,) = faults_of(text)
+    assert (fault.key, fault.line) == ("absorber", line_of(text, "[absorber]"))
+    assert "no end absorbs; leave [absorber] out or set ends" in fault.message
+    assert parse_scenario(text.replace(ABSORBER, "")).absorber is None
+
+
+def test_an_axis_that_leads_nowhere_is_one_fault() -> None:
+    """Rules that need a sound axis wait until it is one."""
+    text = LINE.replace("from = -150.0, to = 150.0", "from = 30, to = -30")
+    assert [fault.key for fault in faults_of(text)] == ["grid.x.to"]
+
+
+def test_an_empty_scenario_misses_each_part_once() -> None:
+    """Every part that must be given is named, and nothing else."""
+    keys = [fault.key for fault in faults_of("")]
+    assert keys == ["particle", "grid", "packet", "propagator.step", "time.end"]
+
+
 @pytest.mark.parametrize("key", ["x", "y", "z"])
 def test_stopping_early_needs_an_absorbing_end(key: str) -> None:
     """Where nothing leaves the grid, the run cannot stop once little is left."""
-    text = LINE.replace("2048 }", '2048, ends = "walls" }').replace(
-        "end = 1200.0", f"end = 1200.0\nstop_when_left_below = 1e-6 # {key}"
-    )
+    text = LINE.replace("2048 }", '2048, ends = "walls" }').replace(ABSORBER, "")
+    text = text.replace("end = 1200.0", f"end = 1200.0\nstop_when_left_below = 1e-6 # {key}")
     assert [fault.key for fault in faults_of(text)] == ["time.stop_when_left_below"]
 
 

@@ -15,7 +15,7 @@ from wavepack.scenario.lines import LineMap, Path, syntax_line
 from wavepack.scenario.overrides import apply_overrides
 from wavepack.scenario.places import Places
 from wavepack.scenario.reader import UNREADABLE, Reader, nearest, shown
-from wavepack.scenario.rules import Draft, check_rules
+from wavepack.scenario.rules import Draft, check_rules, sound
 from wavepack.scenario.schema import (
     AbsorberSpec,
     AccuracySpec,
@@ -165,7 +165,7 @@ def _draft(raw: dict[str, Any], reader: Reader) -> Draft:
     broken |= {key for key, items in lists.items() if UNREADABLE in items}
     if not grid or UNREADABLE in grid.values():
         broken.add("grid")
-    if "x" not in grid:
+    if "x" not in grid or not all(map(sound, grid.values())):
         broken.add("axes")
     single |= {key: _STAND_INS[key] for key in broken & single.keys()}
     single["absorber"] = _spread(single["absorber"], reader.axes)

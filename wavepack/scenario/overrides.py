@@ -1,15 +1,25 @@
 """``KEY=VALUE`` on the command line, applied to the parsed TOML before it is read."""
 
+import difflib
 import tomllib
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 from wavepack.errors import Fault
+from wavepack.fields import specs
+from wavepack.physics.packets import PACKETS
+from wavepack.physics.potentials import SHAPES
 from wavepack.scenario.lines import Path
 from wavepack.scenario.reader import nearest
+from wavepack.scenario.schema import DetectorSpec, RegionSpec
 
-#: Lists of tables, which an override does not create.
-LISTS = ("potential", "packet", "region", "detector")
+#: Lists of tables, which an override does not create, and the classes of their items.
+LISTS: Mapping[str, tuple[type, ...]] = {
+    "potential": tuple(SHAPES.values()),
+    "packet": tuple(PACKETS.values()),
+    "region": (RegionSpec,),
+    "detector": (DetectorSpec,),
+}
 
 
 def apply_overrides(
@@ -58,7 +68,7 @@ def _set(raw: dict[str, Any], key: str, value: Any) -> Path:  # noqa: ANN401 - a
     for position, part in enumerate(parts):
         if isinstance(node, list):
             items = node
-            index, taken = _item(items, part, path)
+            index, taken = _item(items, part, path, last=position == len(parts) - 1)
             path = (*path, index)
             node = items[index]
             if taken:
@@ -75,7 +85,7 @@ def _set(raw: dict[str, Any], key: str, value: Any) -> Path:  # noqa: ANN401 - a
     return path
 
 
-def _item(items: list[Any], part: str, path: Path) -> tuple[int, bool]:
+def _item(items: list[Any], part: str, path: Path, *, last: bool) -> tuple[int, bool]:
     """Return which item is meant, and whether the part named it."""
     place = ".".join(map(str, path))
     if not items:
@@ -88,11 +98,22 @@ def _item(items: list[Any], part: str, path: Path) -> tuple[int, bool]:
     if part in names:
         return names.index(part), True
     if len(items) == 1:
+        keys = _keys(str(path[0])) if len(path) == 1 else []
+        if not last and keys and part not in keys:
+            close = difflib.get_close_matches(part, keys, n=1)
+            hint = f"; did you mean {close[0]}?" if close else ""
+            raise ValueError(f"no {place} is named {part}; named: {names[0]}{hint}")
         return 0, False
     raise ValueError(
         f"{place} has {len(items)} items: name one or give its number"
         f"{nearest(part, [n for n in names if n])}"
     )
+
+
+def _keys(key: str) -> list[str]:
+    """Return the keys that an item of a list may have."""
+    found = {spec.key or name for cls in LISTS[key] for name, spec in specs(cls).items()}
+    return sorted(found | {"shape"})
 
 
 def _name(item: Any, number: int) -> str:  # noqa: ANN401 - any TOML value

@@ -39,7 +39,7 @@ class Draft:
         With `UNREADABLE` in the place of an item that could not be read.
     broken : set of str
         Names of parts that could not be read whole; "axes" where not even the
-        names of the axes are known.
+        names of the axes are known, or one leads nowhere.
     """
 
     grid: Mapping[str, AxisSpec]
@@ -58,6 +58,13 @@ class Draft:
         return [(i, x) for i, x in enumerate(getattr(self, key)) if x is not UNREADABLE]
 
 
+def sound(axis: Any) -> bool:  # noqa: ANN401 - an AxisSpec or `UNREADABLE`
+    """Whether an axis, as far as it could be read, leads upward."""
+    if axis is UNREADABLE or axis.start is None or axis.stop is None:
+        return True
+    return bool(axis.start < axis.stop)
+
+
 def check_rules(draft: Draft, reader: Reader) -> None:
     """Note every fault; a rule waits for the parts it needs whole."""
     for rule, needs in _RULES:
@@ -68,20 +75,31 @@ def check_rules(draft: Draft, reader: Reader) -> None:
 
 def require_numerics(draft: Draft) -> Found:
     """Yield what has been left out and must be given: (path, what to give)."""
+    for rule in (_extents, _step, _end):
+        yield from rule(draft)
+
+
+def _extents(draft: Draft) -> Found:
     for name, axis in draft.grid.items():
         for key, value in (("from", axis.start), ("to", axis.stop), ("points", axis.points)):
             if value is None:
                 yield ("grid", name, key), f"left out; give {key} of axis {name}"
-    if draft.propagator.step is None:
-        yield ("propagator", "step"), "left out; give the longest time step"
-    if draft.time.end is None:
-        yield ("time", "end"), "left out; give the time when the run ends"
     width = draft.absorber.width if draft.absorber else {}
     absorbing = [name for name, axis in draft.grid.items() if "absorbing" in axis.ends]
     missing = [name for name in absorbing if name not in width]
     if missing:
         what = f"left out; axis {', '.join(missing)} has an absorbing end: give [absorber] width"
         yield (("absorber", "width") if draft.absorber else ("absorber",)), what
+
+
+def _step(draft: Draft) -> Found:
+    if draft.propagator.step is None:
+        yield ("propagator", "step"), "left out; give the longest time step"
+
+
+def _end(draft: Draft) -> Found:
+    if draft.time.end is None:
+        yield ("time", "end"), "left out; give the time when the run ends"
 
 
 def _names(draft: Draft) -> Found:
@@ -144,6 +162,9 @@ def _absorber(draft: Draft) -> Found:
         return
     if spec.strength is not None and spec.lowest_energy is not None:
         yield ("absorber", "strength"), "need either strength or lowest_energy, got both"
+    if not any("absorbing" in axis.ends for axis in draft.grid.values()):
+        yield ("absorber",), "no end absorbs; leave [absorber] out or set ends"
+        return
     for name in spec.width:
         if name not in draft.grid:
             yield ("absorber", "width", name), f"need an axis of the grid, got {name}"
@@ -170,7 +191,7 @@ def _grid(draft: Draft) -> Found:
     if total > MOST_POINTS:
         yield ("grid",), f"need at most {MOST_POINTS} points in all, got {total}"
     for name, axis in draft.grid.items():
-        if axis.start is not None and axis.stop is not None and axis.stop <= axis.start:
+        if not sound(axis):
             yield (
                 ("grid", name, "to"),
                 f"need to > from = {axis.start:g}, got {axis.stop:g}",
@@ -284,7 +305,7 @@ def _time(draft: Draft) -> Found:
 
 
 def _output(draft: Draft) -> Found:
-    fewest = min((axis.points or 2**31 for axis in draft.grid.values()), default=1)
+    fewest = min((axis.points or 2**31 for axis in draft.grid.values()), default=2**31)
     if draft.output.thin > fewest // 4:
         yield (
             ("output", "thin"),
@@ -309,7 +330,9 @@ def _extent(axis: AxisSpec) -> str:
 
 #: Every rule, and the parts it needs whole.
 _RULES: Final[tuple[tuple[Callable[[Draft], Found], tuple[str, ...]], ...]] = (
-    (require_numerics, ("grid", "absorber", "propagator", "time")),
+    (_extents, ("grid", "absorber")),
+    (_step, ("propagator",)),
+    (_end, ("time",)),
     (_names, ()),
     (_propagator, ("propagator",)),
     (_masses, ("propagator",)),
