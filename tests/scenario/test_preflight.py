@@ -112,6 +112,12 @@ def test_good_numerics_are_good() -> None:
     assert not found.misses_target
 
 
+def test_a_mass_in_the_wrong_unit_overwhelms_nothing() -> None:
+    """Slices that let nothing through overflow nowhere; that the grid is too coarse is said."""
+    found = look(BARRIER, 'particle.mass="0.4 kg"')
+    assert row(found, "largest momentum, x").verdict == "bad"
+
+
 @pytest.mark.parametrize(
     ("overrides", "topic", "key"),
     [
