@@ -286,13 +286,20 @@ def _parsed(text: str) -> ast.expr:
 
 
 def _check_characters(line: str) -> None:
-    depth = 0
+    open_at: list[int] = []
     for column, character in enumerate(line, start=1):
         if character not in _CHARACTERS:
             raise ExpressionError(_strange(character), column)
-        depth += {"(": 1, ")": -1}.get(character, 0)
-        if depth > DEEPEST:
+        if character == "(":
+            open_at.append(column)
+        elif character == ")":
+            if not open_at:
+                raise ExpressionError("found ) without a (", column)
+            open_at.pop()
+        if len(open_at) > DEEPEST:
             raise ExpressionError(f"need at most {DEEPEST} levels of parentheses, got more", column)
+    if open_at:
+        raise ExpressionError("the ( here is never closed: a ) is missing", open_at[-1])
 
 
 def _strange(character: str) -> str:
