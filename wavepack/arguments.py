@@ -14,8 +14,8 @@ PROGRAM: Final = "wavepack"
 
 EPILOG: Final = """\
 example:
-  wavepack run scenarios/one-barrier.toml
-  wavepack movie runs/one-barrier
+  wavepack run scenarios/barrier.toml
+  wavepack movie runs/barrier
 
 exit status: 0 done, 1 a defect of the program, 2 bad input, 3 accuracy target missed,
 4 the machine refused (disk, memory), 5 stopped by a numerical fault, 130 interrupted
@@ -86,7 +86,7 @@ def build() -> tuple[Parser, dict[str, Parser]]:
             "validate a scenario and forecast accuracy, memory, disk and time",
             "Tells whether grid, step, box and absorbers suit the packet and the potential.\n"
             "Nothing is propagated but a few steps to time them, 5 s at most.",
-            "scenarios/one-barrier.toml",
+            "scenarios/barrier.toml",
         )
     )
     _add_run(
@@ -94,7 +94,7 @@ def build() -> tuple[Parser, dict[str, Parser]]:
             "run",
             "propagate a scenario into a run folder and print the results",
             "An interrupted run (Ctrl-C) saves a checkpoint and can be resumed.",
-            'scenarios/one-barrier.toml --set packet.energy="80 meV" --out runs/low',
+            'scenarios/barrier.toml --set packet.energy="80 meV" --out runs/low',
         )
     )
     _add_resume(
@@ -102,7 +102,7 @@ def build() -> tuple[Parser, dict[str, Parser]]:
             "resume",
             "go on with a run from its newest checkpoint",
             "The result is the one of an unbroken run.",
-            'runs/one-barrier --until "2 ps"',
+            'runs/barrier --until "2 ps"',
         )
     )
     _add_results(
@@ -113,7 +113,7 @@ def build() -> tuple[Parser, dict[str, Parser]]:
             "quantity, the name being its path in results.json, such as\n"
             "quantities.transmission; what is not established is left empty. Spectra are in\n"
             "--json and in run.h5.",
-            "runs/one-barrier --csv",
+            "runs/barrier --csv",
         )
     )
     _add_movie(
@@ -121,7 +121,7 @@ def build() -> tuple[Parser, dict[str, Parser]]:
             "movie",
             "render the stored frames of a run to a movie",
             "The ending of the file chooses H.264 (.mp4), VP9 (.webm) or .gif.",
-            "runs/one-barrier --out barrier.webm --size 1920x1080 --fps 30",
+            "runs/barrier --out barrier.webm --size 1920x1080 --fps 30",
         )
     )
     _folder(
@@ -130,7 +130,7 @@ def build() -> tuple[Parser, dict[str, Parser]]:
             "write report.html, one self-contained page about a run",
             "Results, figures, numerics, provenance and the scenario. The figures are also\n"
             "kept as files in the run folder's figures/.",
-            "runs/one-barrier",
+            "runs/barrier",
         )
     )
     _folder(
@@ -142,7 +142,7 @@ def build() -> tuple[Parser, dict[str, Parser]]:
             "crosscheck.csv and crosscheck.json in the run folder, curves to its figures/.\n"
             "Ends with 3 if they differ by more than the errors that the run states, with 2\n"
             "and the reason where the calculation does not apply.",
-            "runs/one-barrier",
+            "runs/barrier",
         )
     )
     return parser, commands
@@ -249,7 +249,7 @@ def _count(text: str) -> int:
 
 
 def _size(text: str) -> tuple[int, int]:
-    match = re.fullmatch(r"([1-9][0-9]{1,4})[xX]([1-9][0-9]{1,4})", text)
+    match = re.fullmatch(r"([0-9]{1,5})[xX]([0-9]{1,5})", text)
     if match is None:
         raise argparse.ArgumentTypeError(f"need WxH in pixels, such as 1280x720, got {text!r}")
     return int(match[1]), int(match[2])

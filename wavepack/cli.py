@@ -5,6 +5,7 @@ Results go to stdout, progress and messages to stderr.
 
 import json
 import os
+import shlex
 import shutil
 import signal
 import sys
@@ -149,7 +150,7 @@ def _results(asked: Namespace) -> int:
     else:
         _print(tables.as_text(found, bold=decorated(sys.stdout)))
     if found.get("status") in {"running", "interrupted"}:
-        _say(f"not finished; if nothing works on it, `{PROGRAM} resume {asked.folder}` goes on")
+        _say(f"not finished; if nothing works on it, {_resuming(asked.folder)} goes on")
     return DONE
 
 
@@ -202,12 +203,17 @@ def _conclude(found: dict[str, Any], folder: str, missed: Sequence[str]) -> int:
     """Print what a run gave and return its exit status."""
     _print(tables.as_text(found, bold=decorated(sys.stdout)))
     if found["status"] == "interrupted":
-        _say(f"{folder}: interrupted, a checkpoint is saved; `{PROGRAM} resume {folder}` goes on")
+        _say(f"{folder}: interrupted, a checkpoint is saved; {_resuming(folder)} goes on")
         return INTERRUPTED
     for text in missed:
         _say(text)
     _say(f"the run is in {folder}")
     return MISSED if missed else DONE
+
+
+def _resuming(folder: object) -> str:
+    """Return the command that goes on with a run, as it is typed in a shell."""
+    return f"`{PROGRAM} resume {shlex.quote(str(folder))}`"
 
 
 def _render(movie: Callable[[Callable[[int, int], None]], object]) -> None:

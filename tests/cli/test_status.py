@@ -11,8 +11,12 @@ import pytest
 
 from tests.cli.conftest import SCENARIO
 from wavepack import cli, workflow
+from wavepack.archive.disk import machine_errors
 from wavepack.errors import Fault, MachineError, NumericalFault, ScenarioError, UsageError
+from wavepack.running.session import as_run
+from wavepack.running.tables import as_kept
 from wavepack.scenario.load import load_scenario, parse_scenario
+from wavepack.scenario.write import to_toml
 
 Captured = pytest.CaptureFixture[str]
 
@@ -116,3 +120,19 @@ def test_default_folder_is_named_after_the_file(tmp_path: Path) -> None:
     path = tmp_path / "my.wire.toml"
     path.write_text(SCENARIO)
     assert workflow.default_folder(load_scenario(path)) == Path("runs/my.wire")
+
+
+def test_hints_can_be_pasted(tmp_path: Path) -> None:
+    """A folder's name is quoted in commands that go on with its run."""
+    folder = tmp_path / "bend é"
+    folder.mkdir()
+    (folder / "checkpoint.h5").touch()
+    with (
+        pytest.raises(MachineError, match=f"then: wavepack resume '{folder}'"),
+        machine_errors(folder, folder),
+    ):
+        raise OSError(28, "No space left on device")
+    scenario = parse_scenario(SCENARIO)
+    (folder / "scenario.toml").write_text(to_toml(as_kept(as_run(scenario), folder)))
+    with pytest.raises(UsageError, match=f"`wavepack resume '{folder}'` goes on"):
+        workflow.refuse_existing(folder, scenario)

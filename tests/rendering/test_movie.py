@@ -182,6 +182,7 @@ def test_a_full_disk_is_the_machines_fault(line: MakeCase, tmp_path: Path) -> No
         ("m.avi", {}, r"\.mp4, \.webm or \.gif, got '\.avi'"),
         ("m", {}, "got no ending"),
         ("none/m.mp4", {}, "folder .* does not exist"),
+        ("m.mp4", {"size": (13, 7)}, "size: need 240x160 to 8192x8192 pixels, got 13x7"),
         ("m.mp4", {"size": (641, 361)}, "even width and height, got 641x361; try 642x362"),
         ("m.mp4", {"fps": 0.0}, "fps: need more than 0"),
         ("m.gif", {"fps": 60.0}, "at most 50"),

@@ -2,6 +2,7 @@
 
 import os
 import re
+import shlex
 import shutil
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
@@ -140,7 +141,7 @@ def _keep_as(path: Path, previous: Path) -> None:
 
 def _then(folder: Path) -> str:
     if (folder / CHECKPOINT_FILE).exists():
-        return f"then: wavepack resume {folder}"
+        return f"then: wavepack resume {shlex.quote(str(folder))}"
     return "then run it again"
 
 

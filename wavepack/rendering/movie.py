@@ -14,7 +14,7 @@ from av.container import OutputContainer
 from av.video.stream import VideoStream
 
 from wavepack.errors import MachineError, UsageError
-from wavepack.rendering.canvas import Pixels
+from wavepack.rendering.canvas import Pixels, check_size
 from wavepack.rendering.frames import Picture, picture_of
 from wavepack.rendering.from_run import frames_of, scene_of, shown_curves_of
 from wavepack.rendering.palette import Palette
@@ -151,7 +151,7 @@ def format_of(out: Path) -> Format:
 
 
 def _check(form: Format, size: tuple[int, int], fps: float, out: Path) -> None:
-    width, height = size
+    width, height = check_size(size)
     if form.halves_colour and (width % 2 or height % 2):
         raise UsageError(
             f"size: {out.suffix} needs an even width and height, got {width}x{height}; "
