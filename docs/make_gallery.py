@@ -45,6 +45,8 @@ SHOWN = {
 }
 #: How much of a run its figure shows, where that is not all of it.
 UNTIL = {"resonant_pair": 1400.0, "two_apertures": 520.0, "constriction": 1250.0, "box": 930.0}
+#: Energies at which the scenario's file promises a T(E) [its unit].
+PROMISED = {"constriction": (0.020, 0.025, 0.030)}
 WIDTH = 960
 #: Bytes that a picture of the gallery may have.
 LARGEST = 150_000
@@ -139,6 +141,8 @@ def numbers(run: Run) -> Iterator[tuple[str, str]]:
         if seen["mean_crossing_time"]["value"] is not None:
             yield f"mean crossing time at {name}", shown(seen["mean_crossing_time"])
         yield from spectral(name, seen, line=name == SHOWN[run.folder.name])
+        for energy in PROMISED.get(run.folder.name, ()):
+            yield at_energy(name, seen, energy)
     if not leaves(run):
         if "found" in found:
             yield "found there at the start", shown(found["found"])
@@ -185,6 +189,13 @@ def spectral(name: str, seen: dict[str, Any], *, line: bool) -> Iterator[tuple[s
         width = 1e3 * (half(energies, curve, top, -1) + half(energies, curve, top, 1))
         yield f"peak of T(E) at {name}", f"{curve[top]:.4f} at {1e3 * energies[top]:.2f} m{unit}"
         yield "its full width at half maximum", f"{width:.2f} m{unit}"
+
+
+def at_energy(name: str, seen: dict[str, Any], energy: float) -> tuple[str, str]:
+    """Return T(E) at one energy, and what it is."""
+    known = np.array(seen["transmission"], dtype=float)
+    value = np.interp(energy, np.array(seen["energy"]), known)
+    return f"T(E) at {name}, {1e3 * energy:g} m{seen['energy_unit']}", f"{value:.4f}"
 
 
 def half(energies: np.ndarray, curve: np.ndarray, top: int, way: int) -> float:

@@ -115,7 +115,14 @@ TABLES: tuple[tuple[str, type, str], ...] = (
     ),
     ("Energies of a detector", EnergyGrid, "`energies = { from, to, points }`."),
     ("[output]", OutputSpec, "What is kept."),
-    ("[accuracy]", AccuracySpec, "Left out, no result is held against a target."),
+    (
+        "[accuracy]",
+        AccuracySpec,
+        (
+            "Left out, no result is held against a target. While a run states no numerical error, "
+            "a scenario with `[accuracy]` ends with exit status 3."
+        ),
+    ),
 )
 #: Nested tables of pieces.
 NESTED: tuple[tuple[str, type, str], ...] = (

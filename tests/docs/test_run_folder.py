@@ -25,7 +25,7 @@ SECTIONS: dict[str, tuple[Column, ...]] = {
         layout.ENERGY,
         *layout.SPECTRUM.values(),
     ),
-    "`/momentum`": (*layout.WAVENUMBERS.values(), *layout.MOMENTUM.values()),
+    "`/momentum`": (layout.WAVENUMBERS["kx"], *layout.MOMENTUM.values()),
 }
 
 
@@ -39,7 +39,9 @@ def rows(heading: str) -> list[str]:
 def row(column: Column) -> str:
     """Return the line that the page must hold for a column."""
     line, plane = (layout.unit(column.dimension, UNITS, axes) for axes in (1, 2))
-    unit = line if line == plane else f"{line}; in 2D {plane}"
+    # Runs in a plane store no momentum distribution.
+    alike = line == plane or column.dimension == "per_momentum"
+    unit = line if alike else f"{line}; in 2D {plane}"
     kind = "complex" if column.complex else "real"
     return f"| `{column.name}` | {column.long_name} | {unit} | {kind} |"
 

@@ -150,11 +150,11 @@ class PropagatorSpec:
     )
     order: int | None = declare(
         "whole",
-        "order in time: 2 or 4 for split-operator, 2 for crank-nicolson",
+        "order in time: 2 or 4 for split-operator, 2 for crank-nicolson; default: 2",
         default=None,
     )
     space_order: int | None = declare(
-        "whole", "order in space of crank-nicolson: 2 or 4", default=None
+        "whole", "order in space of crank-nicolson: 2 or 4; default: 2", default=None
     )
     step: float | None = declare(
         "number",
