@@ -1,5 +1,6 @@
 """The commands, one short function each; the only place where all rooms meet."""
 
+import shlex
 import signal
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
@@ -31,6 +32,9 @@ if TYPE_CHECKING:
 
 # Rendering needs matplotlib and a video library, 0.5 s to import: only what
 # draws imports it.
+
+#: Fields up to this many points are forecast before they are run.
+WARNED_POINTS = 1 << 18
 
 Tell = Callable[[News], None]
 Note = Callable[[str], None]
@@ -83,12 +87,22 @@ def run(
         # A scenario that is refused leaves everything as it is.
         with threadpool_limits(1):
             setup = Setup(scenario)
+            warn(setup, folder, note)
         if fresh and (former := move_aside(folder)) is not None:
             note(f"{folder}: the former run is now in {former}")
         refuse_existing(folder, scenario)
         make_folder(folder)
         with Session.start(scenario, folder, threads=threads, setup=setup) as session:
             return plain(session.propagate(stop_asked=asked, tell=tell))
+
+
+def warn(setup: Setup, folder: Path, note: Note) -> None:
+    """Say what a forecast finds bad, before it costs time; large planes are not forecast."""
+    if setup.grid.size > WARNED_POINTS:
+        return
+    for row in forecast(setup, timing=False, folder=folder).rows:
+        if row.verdict == "bad":
+            note(f"forecast: {row.topic}: {row.found}, needed: {row.needed}; {row.advice}")
 
 
 def resume(
@@ -342,9 +356,10 @@ def refuse_existing(folder: Path, scenario: Scenario) -> None:
     path = folder / SCENARIO_FILE
     same = path.is_file() and is_run_of(folder, scenario)
     if same:
+        typed = shlex.quote(str(folder))
         raise UsageError(
-            f"{folder}: holds a run of this scenario already: `wavepack results {folder}` shows "
-            f"it, `wavepack resume {folder}` goes on with it, --fresh starts anew"
+            f"{folder}: holds a run of this scenario already: `wavepack results {typed}` shows "
+            f"it, `wavepack resume {typed}` goes on with it, --fresh starts anew"
         )
     raise UsageError(
         f"{folder}: holds a run of another scenario: give another folder with --out, "

@@ -124,6 +124,40 @@ def test_a_killed_extension_can_be_resumed(folder: Path) -> None:
     assert results["provenance"]["former_ends"] == [400.0]
 
 
+def test_an_end_that_cannot_be_meant_is_refused(folder: Path) -> None:
+    """A slip of the unit costs neither memory nor the run's own end."""
+    workflow.run(small(), folder)
+    kept = contents(folder), (folder / "scenario.toml").read_text()
+    with pytest.raises(UsageError, match="give an earlier time"):
+        workflow.resume(folder, until=1e12)
+    assert (contents(folder), (folder / "scenario.toml").read_text()) == kept
+
+
+def test_a_killed_run_shows_how_far_it_came(folder: Path) -> None:
+    """Results are written with every checkpoint, as those of a run at work."""
+    seen: list[dict[str, object]] = []
+
+    def look(news: object) -> None:
+        del news
+        seen.append(json.loads((folder / "results.json").read_text()))
+
+    scenario = small('output.checkpoint_every="0.05 s"', "time.end=20000")
+    with Session.start(scenario, folder) as session:
+        session.propagate(tell=look)
+    assert {found["status"] for found in seen} == {"running"}
+    assert seen[-1]["time"]["value"] > 0  # type: ignore[index]  # plain JSON
+
+
+def test_what_a_forecast_finds_bad_is_said_before_the_run(folder: Path) -> None:
+    """A packet too fast for the grid is not run without a word."""
+    notes: list[str] = []
+    workflow.run(small("packet.energy=10.0", "time.end=5"), folder, note=notes.append)
+    assert any(text.startswith("forecast: ") and "momentum" in text for text in notes)
+    notes.clear()
+    workflow.run(small("time.end=5"), folder.parent / "good", note=notes.append)
+    assert not any("momentum" in text for text in notes)
+
+
 def test_an_end_moved_without_a_checkpoint_counts(folder: Path) -> None:
     """The scenario's end is believed where a process died between the two writings."""
     workflow.run(small(), folder)

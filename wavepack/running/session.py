@@ -38,6 +38,10 @@ from wavepack.scenario.tables import relative_to, with_copies
 from wavepack.scenario.write import to_toml
 from wavepack.stepping.march import Snapshot, march
 
+#: The longest that a run may be made.
+MOST_FRAMES: Final = 100_000
+MOST_ROWS: Final = 10_000_000
+
 #: How many seconds at most pass between two lines of news.
 NEWS_EVERY: Final = 0.2
 
@@ -256,12 +260,21 @@ class Session:
             )
         steps = max(record.step, math.ceil(until / dt * (1 - 1e-12)))
         former = given(self.scenario.time.end, "time.end")
+        rows = steps // record.choices.record_every
+        frames_needed = round(steps * dt / record.choices.span * (record.choices.frames - 1)) + 1
+        if frames_needed > MOST_FRAMES or rows > MOST_ROWS:
+            raise UsageError(
+                f"--until {until:g}: that would take {steps:,} steps, {rows:,} rows and "
+                f"{frames_needed:,} frames at the run's spacing; need at most {MOST_ROWS:,} rows "
+                f"and {MOST_FRAMES:,} frames: give an earlier time"
+            )
+        if steps * dt < former * (1 - 1e-12):
+            self.notes.append(f"the end was {former:g}, it is {steps * dt:g} now")
         # Whoever asks for more than a run that stopped early wants it to go on.
         least = self.scenario.time.stop_when_left_below
         stopped = read_results(self.folder)["status"] == "stopped_early"
         end = TimeSpec(end=steps * dt, stop_when_left_below=None if stopped else least)
-        spacing = record.choices.span / (record.choices.frames - 1)
-        frames = max(self.scenario.output.frames, round(steps * dt / spacing) + 1)
+        frames = max(self.scenario.output.frames, frames_needed)
         output = replace(self.scenario.output, frames=frames)
         self.scenario = replace(self.scenario, time=end, output=output)
         write_atomically(self.folder / SCENARIO_FILE, self._text().encode())
@@ -297,10 +310,10 @@ class Session:
                     return "interrupted", snapshot
             every = self.scenario.output.checkpoint_every
             if snapshot.step == start or now - saved > every:
-                if standing is None:
-                    # Nothing unsound may take the place of a good checkpoint.
-                    self._journal.standing(snapshot)
+                # Nothing unsound may take the place of a good checkpoint.
+                standing = standing or self._journal.standing(snapshot)
                 self._save(snapshot)
+                write_results(self.folder, self._summary("running", standing))
                 saved = time.monotonic()
         if start == schedule.steps:
             snapshot = Snapshot(start, start * schedule.dt, self._stepper.psi)
