@@ -11,6 +11,7 @@ from tests.running.conftest import TEXT, contents
 from wavepack import workflow
 from wavepack.archive.reader import open_run
 from wavepack.errors import ScenarioError, UsageError
+from wavepack.physics.potentials import Table
 from wavepack.running.session import Session
 from wavepack.scenario.load import load_scenario
 from wavepack.scenario.schema import Scenario
@@ -90,7 +91,7 @@ def test_another_table_in_the_folders_scenario_is_refused(scenario: Scenario, fo
     """A scenario that was turned to a table outside is not gone on with."""
     interrupted(scenario, folder)
     path = folder / "scenario.toml"
-    outside = next(piece.file for piece in scenario.potential if piece.name == "bump")
+    outside = next(piece.file for piece in scenario.potential if isinstance(piece, Table))
     path.write_text(path.read_text().replace("tables/potential.bump.csv", outside))
     with pytest.raises(UsageError, match=r"home/bump\.csv, which is not a table the run"):
         workflow.resume(folder)
