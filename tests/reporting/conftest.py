@@ -22,7 +22,10 @@ RESULTS: dict[str, Any] = {
         "balance": _one(1.0000000000002),
         "unfinished": _one(1e-9),
     },
-    "regions": {"drain": {"probability": _one(0.1262345678)}},
+    "regions": {
+        "drain": {"role": "transmitted", "probability": _one(0.1262345678)},
+        "source": {"role": "reflected", "probability": _one(0.8737654322)},
+    },
     "detectors": {
         "exit": {
             "crossed": _one(0.126),

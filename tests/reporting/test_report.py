@@ -57,7 +57,9 @@ def test_page_is_complete(results: Results) -> None:
         'title = "One barrier"',
         "Overview",
         "No frame.",
+        "ends before it was extended",
         "600",
+        "computing time (s)",
         LIMITS,
         CAUTION,
     ):

@@ -55,6 +55,17 @@ def test_decimal_points_stand_in_line() -> None:
     ]
 
 
+def test_without_a_region_of_the_role_there_is_no_zero(results: Results) -> None:
+    """What no region could count is said to be that; numbers stay in line, CSV keeps its 0."""
+    before = line_of(as_text(results), "transmission ")
+    del results["regions"]["source"]
+    results["quantities"]["reflection"]["value"] = 0.0
+    text = as_text(results)
+    assert line_of(text, "reflection").split("  ")[-1] == "no region has this role"
+    assert line_of(text, "transmission ") == before
+    assert "quantities.reflection,0.0,," in as_csv(results)
+
+
 def test_text_names_every_quantity(results: Results) -> None:
     """Each quantity stands in a line of its own with value, error and unit."""
     text = as_text(results)
@@ -155,7 +166,7 @@ def test_csv_holds_every_quantity_in_full(results: Results) -> None:
     assert rows["detectors.exit.mean_crossing_time"]["value"] == ""
     assert rows["detectors.exit.sidebands.+1"]["value"] == "0.01"
     assert rows["expectations.x"]["unit"] == "nm"
-    assert len(rows) == 1 + 6 + 1 + 5 + 2
+    assert len(rows) == 1 + 6 + 2 + 5 + 2
 
 
 def tail(value: float | None, unit: str, fit: float | None) -> Results:

@@ -48,12 +48,13 @@ tbody th { font-weight: 400; overflow-wrap: break-word; max-width: 20rem; }
 .facts th { white-space: nowrap; } .facts td { overflow-wrap: anywhere; }
 .num { font-family: ui-monospace, monospace; font-size: .9rem; white-space: pre; }
 figure { margin: 1.2rem 0; }
-figure img { max-width: 100%; height: auto; background: #fff; border-radius: 4px; }
+figure img { max-width: 100%; min-width: 42rem; height: auto; background: #fff;
+  border-radius: 4px; }
 pre { background: var(--block); padding: 1rem; border-radius: 4px; overflow-x: auto;
   font-size: .85rem; line-height: 1.45; }
 footer { margin-top: 3rem; border-top: 1px solid var(--rule); padding-top: .8rem;
   font-size: .9rem; }
-@media print { body { max-width: none; padding: 0; font-size: 10pt; }
+@media print { figure img { min-width: 0; } body { max-width: none; padding: 0; font-size: 10pt; }
   :root { --ink: #000; --faint: #444; --paper: #fff; --rule: #bbb; --accent: #000;
     --block: #fff; }
   pre { white-space: pre-wrap; border: 1px solid var(--rule); } h2 { break-after: avoid; } }
@@ -180,9 +181,19 @@ def _figure(content: bytes, caption: str) -> str:
     data = base64.b64encode(content).decode("ascii")
     words = escape(caption)
     return (
-        f'<figure><img src="data:image/png;base64,{data}" alt="{words}">'
+        # On a narrow screen a picture keeps a width at which it can be read, and scrolls.
+        f'<figure><div class="scroll"><img src="data:image/png;base64,{data}" alt="{words}"></div>'
         f"<figcaption>{words}</figcaption></figure>"
     )
+
+
+#: Words for what a name in ``provenance`` alone does not tell.
+WORDS: Final = {
+    "planner": "library of the transforms",
+    "wall_seconds": "computing time (s)",
+    "former_ends": "ends before it was extended",
+    "scenario_sha256": "checksum of the scenario (SHA-256)",
+}
 
 
 def _provenance(found: Mapping[str, Any]) -> Iterator[str]:
@@ -190,7 +201,7 @@ def _provenance(found: Mapping[str, Any]) -> Iterator[str]:
         return
     yield '<h2>Provenance</h2><div class="scroll"><table class="facts"><tbody>'
     for name, value in found.items():
-        words = escape(name.replace("_", " "))
+        words = escape(WORDS.get(name, name.replace("_", " ")))
         yield f'<tr><th scope="row">{words}</th><td>{escape(_words(value))}</td></tr>'
     yield "</tbody></table></div>"
 

@@ -23,6 +23,9 @@ TAILS_NOTE: Final = (
     "what is still held shared as the tail shares it. It is no part of the probabilities above."
 )
 NO_VALUE: Final = "none"
+NO_ROLE: Final = "no region has this role"
+#: What can only be counted where a region has the role.
+ROLES: Final = {"transmission": "transmitted", "reflection": "reflected"}
 
 #: Times at a detector that are printed where they are known.
 TIMES: Final = {
@@ -75,7 +78,7 @@ def sections(results: Mapping[str, Any]) -> tuple[Section, ...]:
     """Return all tables of a run's results, empty ones left out."""
     found = [
         _fault(results),
-        Section("Probabilities", _quantities(results.get("quantities", {}))),
+        Section("Probabilities", _probabilities(results)),
         _tails(results.get("tails") or {}, results.get("extrapolated") or {}),
         Section("Regions", _regions(results.get("regions", {}))),
         *(_detector(name, seen) for name, seen in results.get("detectors", {}).items()),
@@ -138,7 +141,9 @@ def numbers(cells: Sequence[str]) -> list[str]:
     for cell in cells:
         match = _NUMBER.fullmatch(cell)
         shifted.append(" " * (whole - len(match[1]) if match else 0) + cell)
-    return _padded(shifted)
+    # A remark in the place of a number may be longer than the column; nothing follows it.
+    width = max((len(cell) for cell in shifted if cell != NO_ROLE), default=0)
+    return [cell.ljust(width) for cell in shifted]
 
 
 def significant(value: float | None, digits: int = 7) -> str:
@@ -182,6 +187,17 @@ def _error(error: float | None) -> str:
 
 def _quantities(found: Mapping[str, Any]) -> tuple[Row, ...]:
     return tuple(_row(name, one) for name, one in found.items())
+
+
+def _probabilities(results: Mapping[str, Any]) -> tuple[Row, ...]:
+    """Return the rows of the quantities; what no region could count is no 0."""
+    regions = results.get("regions", {}).values()
+    roles = {one.get("role") for one in regions}
+    missing = {name for name, role in ROLES.items() if role not in roles and None not in roles}
+    return tuple(
+        Row(name, NO_ROLE) if name in missing and not one["value"] else _row(name, one)
+        for name, one in results.get("quantities", {}).items()
+    )
 
 
 def _regions(found: Mapping[str, Any]) -> tuple[Row, ...]:

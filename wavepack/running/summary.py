@@ -83,8 +83,8 @@ def _standing_results(
         expectations[f"sigma_{name}"] = quantity(seen.spread[i], units["length"])
         expectations[f"sigma_p{name}"] = quantity(seen.momentum_spread[i], momentum)
     regions = {
-        name: {"probability": quantity(standing.region(i))}
-        for i, name in enumerate(setup.book.names)
+        spec.name: {"role": spec.role, "probability": quantity(standing.region(i))}
+        for i, spec in enumerate(setup.scenario.region)
     }
     return {"quantities": quantities, "regions": regions, "expectations": expectations}
 
