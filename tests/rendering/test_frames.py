@@ -14,7 +14,7 @@ from wavepack.rendering import style
 from wavepack.rendering.canvas import Canvas, Rect, polyline
 from wavepack.rendering.frames import KINDS, picture_of
 from wavepack.rendering.line_picture import LinePicture
-from wavepack.rendering.line_structure import intervals
+from wavepack.rendering.line_structure import intervals, named_bars
 from wavepack.rendering.map_picture import MapPicture
 from wavepack.rendering.scene import Curves, Frames, Region, Scene, time_format
 
@@ -189,3 +189,17 @@ def test_time_stamps_keep_their_width() -> None:
     assert len({len(text) for text in texts}) == 1
     assert len(texts) == 200
     assert stamp(1200.0) == "t = 1200.0 fs"
+
+
+def test_a_narrow_bar_is_named_where_there_is_room() -> None:
+    """A name wider than its bar is centred over it unless another name stands there."""
+    wide = [(0.0, 300.0, "emitter", "red"), (340.0, 640.0, "collector", "blue")]
+    narrow = (310.0, 320.0, "well", "green")
+    panel = Rect(0, 0, 640, 100)
+    assert [name for _, name, _ in named_bars([*wide, narrow], 12, panel)] == [
+        "emitter", "collector", "well",
+    ]  # fmt: skip
+    crowded = (312.0, 322.0, "hut", "brown")
+    places = {name: place for place, name, _ in named_bars([*wide, narrow, crowded], 12, panel)}
+    assert places["well"] == 315.0
+    assert "hut" not in places

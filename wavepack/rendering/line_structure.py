@@ -1,5 +1,7 @@
 """What stands still along one axis: potential, energy, absorbers, regions, detectors."""
 
+from collections.abc import Iterator
+
 import numpy as np
 from matplotlib.axes import Axes
 
@@ -29,7 +31,7 @@ def draw_structure(sheet: Sheet, panel: Rect, scene: Scene, title_room: float) -
     axes.yaxis.set_label_position("right")
     axes.set_xticks([])
     axes.yaxis.set_major_locator(round_ticks(panel.height / (3 * sheet.em)))
-    text = scene.units.label("V at t = 0" if scene.driven else "V", scene.units.energy)
+    text = scene.units.label(potential_name(scene), scene.units.energy)
     axes.set_ylabel(
         text,
         color=style.POTENTIAL,
@@ -41,6 +43,11 @@ def draw_structure(sheet: Sheet, panel: Rect, scene: Scene, title_room: float) -
         axes.yaxis.set_visible(False)
     _draw_ruler(sheet, panel, scene)
     _draw_detectors(axes, sheet, panel, scene)
+
+
+def potential_name(scene: Scene) -> str:
+    """Name the potential as it is drawn: as the run sees it, sharp edges smoothed."""
+    return "V on the grid at t = 0" if scene.driven else "V on the grid"
 
 
 def shortened(title: str, sheet: Sheet, room: float) -> str:
@@ -120,12 +127,36 @@ def _draw_ruler(sheet: Sheet, panel: Rect, scene: Scene) -> None:
     axes.set_axis_off()
     axes.set_xlim(low, high)
     axes.set_ylim(0, 1)
-    for start, stop, name, colour in bars:
+    for start, stop, _, colour in bars:
         axes.axvspan(start, stop, color=colour, linewidth=0)
-        width = (stop - start) / (high - low) * panel.width
-        if style.text_width(name, 0.8 * sheet.em) < width:
-            middle = panel.left + ((start + stop) / 2 - low) / (high - low) * panel.width
-            sheet.text(middle, panel.top - 3.2 * thick, name, ems=0.8, ha="center", color=colour)
+    scale = panel.width / (high - low)
+    shown = [
+        (panel.left + (start - low) * scale, panel.left + (stop - low) * scale, name, colour)
+        for start, stop, name, colour in bars
+    ]
+    for middle, name, colour in named_bars(shown, sheet.em, panel):
+        sheet.text(middle, panel.top - 3.2 * thick, name, ems=0.8, ha="center", color=colour)
+
+
+def named_bars(
+    bars: list[tuple[float, float, str, str]], em: float, panel: Rect
+) -> Iterator[tuple[float, str, str]]:
+    """Yield where the names of bars go: into wide ones, else over or beside them if there is room.
+
+    Bars are (left, right, name, colour) [pixels].
+    """
+    taken: list[tuple[float, float]] = []
+    for left, right, name, colour in sorted(bars, key=lambda bar: bar[0] - bar[1]):
+        width = style.text_width(name, 0.8 * em)
+        middle = (left + right) / 2
+        # Centred, flush with the bar's left end, flush with its right end.
+        for place in (middle, left + width / 2, right - width / 2):
+            ends = place - width / 2, place + width / 2
+            inside = panel.left <= ends[0] and ends[1] <= panel.right
+            if inside and all(ends[1] + em / 2 < a or b + em / 2 < ends[0] for a, b in taken):
+                taken.append(ends)
+                yield place, name, colour
+                break
 
 
 def region_looks(scene: Scene) -> list[tuple[str, style.Dashes]]:

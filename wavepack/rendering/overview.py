@@ -13,7 +13,12 @@ from matplotlib.layout_engine import ConstrainedLayoutEngine
 from wavepack.arrays import RealArray
 from wavepack.rendering import style
 from wavepack.rendering.canvas import round_ticks
-from wavepack.rendering.line_structure import intervals, region_looks, with_arrow
+from wavepack.rendering.line_structure import (
+    intervals,
+    potential_name,
+    region_looks,
+    with_arrow,
+)
 from wavepack.rendering.scales import PowerScale, energy_window, numbers
 from wavepack.rendering.scene import (
     Curves,
@@ -95,10 +100,10 @@ def _draw_profile(axes: Axes, scene: Scene) -> None:
                 color=colour,
                 parse_math=False,
             )
-    at_start = " at t = 0" if scene.driven else ""
-    axes.set_ylabel(
-        scene.units.label(f"V{at_start}", scene.units.energy), fontsize=10, color=style.POTENTIAL
-    )
+    # On two lines, since the panel is low.
+    name = potential_name(scene)
+    name = name.replace(" at", "\nat") if scene.driven else name.replace(" the", "\nthe")
+    axes.set_ylabel(scene.units.label(name, scene.units.energy), fontsize=9, color=style.POTENTIAL)
 
 
 def _draw_space_time(axes: Axes, scene: Scene, frames: Frames, scale: PowerScale) -> QuadMesh:

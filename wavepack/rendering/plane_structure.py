@@ -167,11 +167,23 @@ class _Labels:
         other = 1 if detector.axis == "x" else 0
         low, high = self._scene.extent(other)
         ends = max(detector.span[0], low), min(detector.span[1], high)
+        places: list[tuple[float, float, int, int]]
         if detector.axis == "x":
             places = [(detector.at, ends[e], s, d) for e, d in ((0, 1), (1, -1)) for s in (1, -1)]
         else:
             places = [(ends[e], detector.at, s, d) for e, s in ((1, -1), (0, 1)) for d in (1, -1)]
+        if self._short(detector.axis, ends):
+            middle = sum(ends) / 2
+            beside = [(detector.at, middle, s, 0) for s in (1, -1)]
+            above = [(middle, detector.at, 0, d) for d in (1, -1)]
+            places = (beside if detector.axis == "x" else above) + places
         self._write(with_arrow(detector.name, detector.toward), places, style.INK)
+
+    def _short(self, axis: str, ends: tuple[float, float]) -> bool:
+        """Whether a detector is short enough for its name to stand at its middle."""
+        places = [(0.0, end) if axis == "x" else (end, 0.0) for end in ends]
+        low, high = self._axes.transData.transform(places)
+        return bool(np.abs(high - low).max() < 8 * self._em)
 
     def _write(self, text: str, places: list[tuple[float, float, int, int]], colour: str) -> None:
         if self.panel is None:
@@ -187,8 +199,8 @@ class _Labels:
                     transform=None,
                     fontsize=self._size,
                     color=colour,
-                    ha="left" if right > 0 else "right",
-                    va="bottom" if up > 0 else "top",
+                    ha=("center", "left", "right")[right],
+                    va=("center", "bottom", "top")[up],
                     parse_math=False,
                     path_effects=[withStroke(linewidth=2, foreground="white")],
                 )
@@ -198,10 +210,10 @@ class _Labels:
         self, text: str, x: float, y: float, right: int, up: int
     ) -> tuple[tuple[float, float, float, float], float, float]:
         across, row = self._axes.transData.transform((x, y))
-        across, row = across + 0.5 * right * self._em, row + 0.4 * up * self._em
+        across, row = across + 0.35 * right * self._em, row + 0.3 * up * self._em
         width, height = style.text_width(text, self._em), 1.25 * self._em
-        left = across if right > 0 else across - width
-        foot = row if up > 0 else row - height
+        left = across - width * (1 - right) / 2
+        foot = row - height * (1 - up) / 2
         return (left, foot, left + width, foot + height), across, row
 
     def _free(self, box: tuple[float, float, float, float]) -> bool:
