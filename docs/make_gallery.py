@@ -58,6 +58,11 @@ Every scenario that comes with the program: its question, what to expect, and wh
 file as it is gives. Written by `python docs/make_gallery.py`, which runs them all; no number here
 carries a numerical error, because a single run does not establish one. On one core each takes
 between a second and half a minute.
+
+V is drawn as it is on the grid. A sharp edge is smoothed over a spacing by a kernel without a
+second moment, so that the result does not depend on where the edge falls between points; the
+price is the small horn on either side of each edge
+([design/edges.md](design/edges.md)). They are no part of the structure.
 """
 
 
