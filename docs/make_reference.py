@@ -18,7 +18,8 @@ from wavepack.physics.shapes import Piece
 from wavepack.physics.shapes_layers import Layer
 from wavepack.physics.shapes_sharp import Aperture
 from wavepack.physics.units import ATOMIC, TABLE, UnitSystem
-from wavepack.scenario.rules import Draft, require_numerics
+from wavepack.scenario.choose_terms import left_out
+from wavepack.scenario.load import parse_scenario
 from wavepack.scenario.schema import (
     AbsorberSpec,
     AccuracySpec,
@@ -85,6 +86,10 @@ for those without a shape.
 `potential.0.height=0.2`, `potential.barrier.height=0.2`. The number may be left out where a list
 has one item.
 
+**Chosen.** What the tables below call *chosen* may be left out: `check` and `run` choose it to meet
+`accuracy.target` (1e-3 without one), say what they chose and why, and the run folder's
+`scenario.toml` holds it ([choosing_numerics.md](choosing_numerics.md#left-out)).
+
 **Faults** are reported all at once, each with file, line, key, what was found and what is
 wanted; a misspelt key names its nearest neighbour.
 """
@@ -142,17 +147,17 @@ def _lines() -> Iterator[str]:
     yield HEAD
     yield from _units()
     yield from _parameters()
-    needed = _needed()
+    chosen = _chosen()
     for heading, cls, sentence in TABLES[:2]:
-        yield from _section(f"## `{heading}`", cls, sentence, needed)
+        yield from _section(f"## `{heading}`", cls, sentence, chosen)
     yield from _shapes("[[potential]]", Piece, SHAPES, "The pieces add up.")
     for heading, cls, sentence in NESTED:
-        yield from _section(f"### {heading}", cls, sentence, needed)
+        yield from _section(f"### {heading}", cls, sentence, chosen)
     several = "At least one; several are each normalised, times amplitude e^(i phase), and added."
     yield from _shapes("[[packet]]", Packet, PACKETS, several)
     for heading, cls, sentence in TABLES[2:]:
         title = f"## `{heading}`" if heading.startswith("[") else f"### {heading}"
-        yield from _section(title, cls, sentence, needed)
+        yield from _section(title, cls, sentence, chosen)
     yield from _expressions()
 
 
@@ -181,10 +186,10 @@ def _parameters() -> Iterator[str]:
 
 
 def _section(
-    title: str, cls: type, sentence: str, needed: Mapping[str, set[str]] | None = None
+    title: str, cls: type, sentence: str, chosen: Mapping[str, set[str]] | None = None
 ) -> Iterator[str]:
     yield f"{title}\n\n{sentence}\n"
-    yield from _table(cls, set(specs(cls)), (needed or {}).get(cls.__name__, set()))
+    yield from _table(cls, set(specs(cls)), (chosen or {}).get(cls.__name__, set()))
 
 
 def _shapes(title: str, base: type, classes: Mapping[str, type], sentence: str) -> Iterator[str]:
@@ -203,17 +208,17 @@ def _shape_row(classes: Mapping[str, type]) -> str:
     return f"| `shape` | {options} | | required | what it is |"
 
 
-def _table(cls: type, names: set[str], needed: set[str]) -> Iterator[str]:
+def _table(cls: type, names: set[str], chosen: set[str]) -> Iterator[str]:
     yield "| key | value | unit | default | |\n|---|---|---|---|---|"
-    yield from _rows(cls, names, needed)
+    yield from _rows(cls, names, chosen)
     yield ""
 
 
-def _rows(cls: type, names: set[str], needed: set[str]) -> Iterator[str]:
+def _rows(cls: type, names: set[str], chosen: set[str]) -> Iterator[str]:
     for name, spec in specs(cls).items():
         if name in names:
             key = spec.key or name
-            default = "required" if key in needed else _default(cls, name, spec)
+            default = "chosen" if key in chosen else _default(cls, name, spec)
             doc = spec.doc.replace("|", "\\|")
             yield f"| `{key}` | {_value(spec)} | {_unit(spec)} | {default} | {doc} |"
 
@@ -271,15 +276,25 @@ def _default(cls: type, name: str, spec: Spec) -> str:
     return f'`"{value}"`' if isinstance(value, str) else f"`{str(value).lower()}`"
 
 
-def _needed() -> dict[str, set[str]]:
-    """Return the keys that may be None in their class but must be given, by class."""
-    draft = Draft({"x": AxisSpec()}, AbsorberSpec(), PropagatorSpec(), TimeSpec(), OutputSpec(),
-                  (), (), (), ())  # fmt: skip
+def _chosen() -> dict[str, set[str]]:
+    """Return the keys that the program chooses where they are left out, by class."""
+    smallest = """
+[particle]
+mass = 1.0
+[grid]
+x = {}
+[[packet]]
+shape = "gaussian"
+center = 0.0
+sigma = 1.0
+energy = 1.0
+"""
     classes = {"grid": AxisSpec, "absorber": AbsorberSpec, "propagator": PropagatorSpec,
                "time": TimeSpec}  # fmt: skip
     found: dict[str, set[str]] = {}
-    for path, _ in require_numerics(draft):
-        found.setdefault(classes[str(path[0])].__name__, set()).add(str(path[-1]))
+    for key in left_out(parse_scenario(smallest)):
+        parts = [part for part in key.split(".") if part != "x"]
+        found.setdefault(classes[parts[0]].__name__, set()).add(parts[-1])
     return found
 
 

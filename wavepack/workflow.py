@@ -20,6 +20,8 @@ from wavepack.errors import MachineError, UsageError
 from wavepack.running.session import News, Session, as_run
 from wavepack.running.tables import as_kept
 from wavepack.scenario.build import Setup
+from wavepack.scenario.choose import choose
+from wavepack.scenario.choose_terms import target_of
 from wavepack.scenario.load import load_scenario
 from wavepack.scenario.preflight import Forecast, forecast
 from wavepack.scenario.schema import Scenario
@@ -50,12 +52,16 @@ CROSSCHECK_TABLE: Final = "crosscheck.csv"
 def check(scenario: Scenario, *, timing: bool = True) -> Forecast:
     """Forecast whether a scenario's numbers suit it and what the run will cost.
 
+    What the scenario leaves out is chosen first (`wavepack.scenario.choose`).
+
     Raises
     ------
     ScenarioError
-        If the scenario cannot be made ready.
+        If the scenario cannot be made ready, or does not tell what it leaves out.
     """
-    return forecast(Setup(scenario), timing=timing, folder=default_folder(scenario))
+    chosen, choices = choose(scenario)
+    found = forecast(Setup(chosen), timing=timing, folder=default_folder(scenario))
+    return replace(found, choices=choices)
 
 
 def run(
@@ -70,8 +76,9 @@ def run(
     """Propagate a scenario into a run folder and return its results.
 
     The folder is ``runs/`` and the stem of the scenario's file by default.
-    SIGINT and SIGTERM end it at the next stop, with a checkpoint saved and the
-    status ``interrupted``.
+    What the scenario leaves out is chosen first, noted, and written to the
+    folder's scenario.toml. SIGINT and SIGTERM end the run at the next stop, with
+    a checkpoint saved and the status ``interrupted``.
 
     Raises
     ------
@@ -81,13 +88,16 @@ def run(
         See `wavepack.errors`.
     """
     folder = default_folder(scenario) if out is None else Path(out)
+    scenario, choices = choose(scenario)
+    for choice in choices:
+        note(f"chosen: {choice.text}: {choice.reason}")
     if not fresh:
         refuse_existing(folder, scenario)
     with asked_to_stop() as asked:
         # A scenario that is refused leaves everything as it is.
         with threadpool_limits(1):
             setup = Setup(scenario)
-            warn(setup, folder, note)
+            warn(setup, folder, note, asked=bool(choices) or scenario.accuracy is not None)
         if fresh and (former := move_aside(folder)) is not None:
             note(f"{folder}: the former run is now in {former}")
         refuse_existing(folder, scenario)
@@ -96,13 +106,17 @@ def run(
             return plain(session.propagate(stop_asked=asked, tell=tell))
 
 
-def warn(setup: Setup, folder: Path, note: Note) -> None:
-    """Say what a forecast finds bad, before it costs time; large planes are not forecast."""
-    if setup.grid.size > WARNED_POINTS:
+def warn(setup: Setup, folder: Path, note: Note, *, asked: bool) -> None:
+    """Say what a forecast finds bad, before it costs time.
+
+    With ``asked``, also by how much an accuracy is missed that was asked for or
+    chosen for; without, large planes are not forecast.
+    """
+    if setup.grid.size > WARNED_POINTS and not asked:
         return
-    for row in forecast(setup, timing=False, folder=folder).rows:
-        if row.verdict == "bad":
-            note(f"forecast: {row.topic}: {row.found}, needed: {row.needed}; {row.advice}")
+    target = target_of(setup.scenario) if asked else None
+    for text in forecast(setup, timing=False, folder=folder).shortfalls(target):
+        note(f"forecast: {text}")
 
 
 def resume(

@@ -272,12 +272,12 @@ class Estimates:
     def wide_enough(self, forecast: LayerForecast, goal: float) -> float | None:
         """Return a width [length] at which a layer gives back less than a goal."""
         layer = forecast.layer
-        energies, weights = self._towards(layer)
+        energies, weights = self.arriving(layer)
         for factor in (1.25, 1.5, 2.0, 3.0, 4.0, 6.0, 8.0, 12.0):
             wider = Layer(
                 layer.axis, layer.upper, 0.0, layer.width * factor, layer.form, 1.0, layer.power
             )
-            closed = self._closed(layer)
+            closed = self.closed(layer)
             strength = suited_strength(wider, energies, weights, self.c, closed=closed)
             wider = Layer(
                 layer.axis, layer.upper, 0.0, wider.width, layer.form, strength, layer.power
@@ -350,10 +350,12 @@ class Estimates:
         paths = [ahead] * (ends[1] == "absorbing") + [back] * (ends[0] == "absorbing")
         return max((p for p in paths if math.isfinite(p)), default=ahead)
 
-    def _closed(self, layer: Layer) -> bool:
+    def closed(self, layer: Layer) -> bool:
+        """Return whether a wall stands behind a layer."""
         return "walls" in self.setup.grid.axes[layer.axis].ends
 
-    def _towards(self, layer: Layer) -> tuple[RealArray, RealArray]:
+    def arriving(self, layer: Layer) -> tuple[RealArray, RealArray]:
+        """Return the energies that reach a layer before the end, and their weights."""
         inner = layer.start if layer.upper else layer.stop
         content = self.setup.content
         energies, weights = content.towards(layer.axis, self.setup.landscape, inner)
@@ -368,8 +370,8 @@ class Estimates:
         return energies, share * weights
 
     def _layer(self, layer: Layer) -> LayerForecast:
-        energies, weights = self._towards(layer)
-        back = reflection(layer, energies, self.c, closed=self._closed(layer))
+        energies, weights = self.arriving(layer)
+        back = reflection(layer, energies, self.c, closed=self.closed(layer))
         present = weights > 1e-4 * weights.max()
         worst = float(back[present].max()) if present.any() else 0.0
         total = max(float(weights.sum()), 1e-300)

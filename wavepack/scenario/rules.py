@@ -73,35 +73,6 @@ def check_rules(draft: Draft, reader: Reader) -> None:
                 reader.fault(path, message)
 
 
-def require_numerics(draft: Draft) -> Found:
-    """Yield what has been left out and must be given: (path, what to give)."""
-    for rule in (_extents, _step, _end):
-        yield from rule(draft)
-
-
-def _extents(draft: Draft) -> Found:
-    for name, axis in draft.grid.items():
-        for key, value in (("from", axis.start), ("to", axis.stop), ("points", axis.points)):
-            if value is None:
-                yield ("grid", name, key), f"left out; give {key} of axis {name}"
-    width = draft.absorber.width if draft.absorber else {}
-    absorbing = [name for name, axis in draft.grid.items() if "absorbing" in axis.ends]
-    missing = [name for name in absorbing if name not in width]
-    if missing:
-        what = f"left out; axis {', '.join(missing)} has an absorbing end: give [absorber] width"
-        yield (("absorber", "width") if draft.absorber else ("absorber",)), what
-
-
-def _step(draft: Draft) -> Found:
-    if draft.propagator.step is None:
-        yield ("propagator", "step"), "left out; give the longest time step"
-
-
-def _end(draft: Draft) -> Found:
-    if draft.time.end is None:
-        yield ("time", "end"), "left out; give the time when the run ends"
-
-
 def _names(draft: Draft) -> Found:
     for key in ("potential", "packet", "region", "detector"):
         items = draft.items(key)
@@ -330,9 +301,6 @@ def _extent(axis: AxisSpec) -> str:
 
 #: Every rule, and the parts it needs whole.
 _RULES: Final[tuple[tuple[Callable[[Draft], Found], tuple[str, ...]], ...]] = (
-    (_extents, ("grid", "absorber")),
-    (_step, ("propagator",)),
-    (_end, ("time",)),
     (_names, ()),
     (_propagator, ("propagator",)),
     (_masses, ("propagator",)),

@@ -50,8 +50,8 @@ class Line:
 
     @cached_property
     def edges_sharp(self) -> RealArray:
-        """V with sharp edges, on finer slices [energy]."""
-        if not self._setup.landscape.sharp:
+        """V with sharp edges and corners, on finer slices [energy]."""
+        if not any(piece.edges(0) for piece in self._setup.landscape.static_pieces):
             return self.edges_smoothed
         return self._finer(self._axis.spacing / SLICES)
 

@@ -154,7 +154,9 @@ class NumericsSurvey(Survey):
             wanted = " and ".join(
                 f"grid.{line.name}.points = {self.points(line, factor)}"
                 for i, line in enumerate(self.setup.grid.axes)
-                if not self.setup.spectral or self.estimates.jump[i] > 0
+                if not self.setup.spectral
+                or self.estimates.jump[i] > 0
+                or self.setup.grid.ndim == 1
             )
             advice = f"take {wanted} or more"
         return self.error_row("error of the spacing", error, verdict, advice)

@@ -5,6 +5,8 @@ import textwrap
 from dataclasses import dataclass, field
 from typing import Any, Final, Literal
 
+from wavepack.scenario.choose_terms import Choice, choices_text
+
 Verdict = Literal["good", "watch", "bad"]
 VERDICTS: Final[tuple[Verdict, ...]] = ("good", "watch", "bad")
 DAY: Final = 86_400.0
@@ -31,10 +33,13 @@ class Forecast:
         One for each thing looked at.
     quantities : dict
         The numbers behind them, in run units; costs in bytes and seconds.
+    choices : tuple of Choice
+        Numbers that the scenario left out and that were chosen for it.
     """
 
     rows: tuple[Row, ...]
     quantities: dict[str, Any] = field(default_factory=dict)
+    choices: tuple[Choice, ...] = ()
 
     @property
     def verdict(self) -> Verdict:
@@ -46,14 +51,30 @@ class Forecast:
         """Whether the errors expected exceed the accuracy that was asked for."""
         return any(row.topic == "accuracy" and row.verdict == "bad" for row in self.rows)
 
+    def shortfalls(self, target: float | None) -> tuple[str, ...]:
+        """Return what is bad, and by how much the errors foretold miss a target."""
+        error = float(self.quantities.get("error", 0.0))
+        found = []
+        if target is not None and error > target:
+            found.append(
+                f"the error is about {error:.1g}, {error / target:.2g} times the target {target:g}"
+            )
+        found += [
+            f"{row.topic}: {row.found}, needed: {row.needed}; {row.advice}"
+            for row in self.rows
+            if row.verdict == "bad"
+        ]
+        return tuple(found)
+
     def text(self, width: int = 100) -> str:
-        """Return a table in plain text; advice stands below its row."""
+        """Return a table in plain text; advice stands below its row, choices above all."""
         head = Row("", "found", "needed", "good")
         columns = [
             max(len(getattr(row, name)) for row in (head, *self.rows))
             for name in ("topic", "found", "needed")
         ]
-        lines = [_line(head, columns, "")]
+        lines = [choices_text(self.choices, width), ""] if self.choices else []
+        lines.append(_line(head, columns, ""))
         for row in self.rows:
             lines.append(_line(row, columns, row.verdict))
             if row.advice:
